@@ -151,7 +151,9 @@ def _valid_rest(c: Array, x: Array, m: Discrete, s: Array) -> bool:
 def rest_point(c: Array, x: Array, m: Discrete, s: Array, target: Array) -> float:
     """Rest point of the present discrete state by Newton's method.
 
-    Writes it to ``target`` and returns the scaled distance from ``x``; infinite where there is none.
+    Writes it to ``target`` and returns the scaled distance from ``x``; infinite where there is none, 0 where
+    the state already moves straight towards it: the conditions of a discrete state are linear, so that none
+    of them can fail on the way.
     """
     if m[M_MODE] == FREEWHEEL or m[M_MODE] == RECOVERING:
         return np.inf
@@ -162,11 +164,14 @@ def rest_point(c: Array, x: Array, m: Discrete, s: Array, target: Array) -> floa
     jacobian = np.empty((5, 5))
     rhs = np.empty(5)
     y = x.copy()
-    for _ in range(4):
+    velocity = np.zeros(5)
+    start = np.empty(5)
+    for k in range(4):
         expand(c, y, m, s, 1)
-        start = np.empty(5)
         for i in range(n):
             start[i] = s[rows[int(which[i])], 1] / scale[i]
+        if k == 0:
+            velocity[:] = start
         for j in range(n):
             k = int(which[j])
             kept = y[k]
@@ -202,12 +207,24 @@ def rest_point(c: Array, x: Array, m: Discrete, s: Array, target: Array) -> floa
         y[X_Q] = charge(c, y[X_IL])
     if not _valid_rest(c, y, m, s):
         return np.inf
-    distance = 0.0
-    for i in range(n):
-        k = int(which[i])
-        distance = max(distance, abs(y[k] - x[k]) / scale[i])
     target[:] = y
-    return distance
+    distance = 0.0
+    along = 0.0
+    square = 0.0
+    for i in range(n):
+        gap = (y[int(which[i])] - x[int(which[i])]) / scale[i]
+        distance = max(distance, abs(gap))
+        along += gap * velocity[i]
+        square += gap * gap
+    if square == 0.0 or along <= 0.0:
+        return distance
+    astray = 0.0
+    speed = 0.0
+    for i in range(n):
+        gap = (y[int(which[i])] - x[int(which[i])]) / scale[i]
+        astray = max(astray, abs(velocity[i] - along / square * gap))
+        speed = max(speed, abs(velocity[i]))
+    return 0.0 if astray < 1e-4 * speed else distance
 
 
 @compiled
@@ -253,7 +270,7 @@ def run_cycle(
             if g[G_STALLED] > 12.0:
                 _nudge(c, x, m, s)
                 elapsed += 1e-12
-        if steps >= 24 and steps % 8 == 0 and not accounts:
+        if steps >= 12 and steps % 6 == 0 and not accounts:
             distance = rest_point(c, x, m, s, target)
             if distance < 1e-7 and distance < g[G_DISTANCE]:
                 x[:] = target

@@ -120,7 +120,7 @@ def active_jacobian(c: Array, current: float, gain: float, inductance: float, sh
 
 
 @compiled
-def start_margin(row: Array, c: Array, s: Array) -> float:
+def start_margin(row: Array, c: Array) -> float:
     """Start margin S [1]: above 1 the static solution is unstable and oscillation starts by itself.
 
     Direct coupling: ``beta' L(i) / (R_h G (L_o + tau (R_o + k ESR)))``. With a capacitor: the factor by

@@ -32,6 +32,8 @@ DIMENSIONS = 4
 MEMORY = 4
 CLOSED = 2e-9
 MOST_PERIOD = 12
+# where a rest point is stable too, bursts may find it late: so many times more cycles are waited for it
+PATIENCE = 12
 
 PERIODIC, IRREGULAR, AT_REST, UNSETTLED = 0, 1, 2, 3
 
@@ -282,7 +284,7 @@ def _find_period(trail: Array, kinds: Discrete, n: int, closeness: float) -> int
 
 @compiled
 def settle(
-    c: Array, x: Array, m: Discrete, s: Array, settings: Array, g: Array
+    c: Array, x: Array, m: Discrete, s: Array, settings: Array, g: Array, started_by_itself: bool
 ) -> tuple[int, int]:
     """Bring the state ``(x, m)`` to the steady state; returns how it ended and the period in cycles.
 
@@ -301,6 +303,8 @@ def settle(
     raw = np.empty(DIMENSIONS)
     plain = int(settings[O_PLAIN])
     total = plain + int(settings[O_MORE])
+    if not started_by_itself:
+        total = plain + PATIENCE * int(settings[O_MORE])
     next_attempt = plain
     n = 0
     while n < total:

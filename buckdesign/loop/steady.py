@@ -212,7 +212,8 @@ def solve_one(row: Array, start: Array, given: bool, settings: Array, out: Array
     else:
         operating_start(row, c, x)
     classify(c, x, m, s)
-    ended, period = settle(c, x, m, s, settings, g)
+    margin = start_margin(row, c)
+    ended, period = settle(c, x, m, s, settings, g, margin > 1.0)
     first = x.copy()
     cycles = 0
     if ended == PERIODIC:
@@ -229,7 +230,6 @@ def solve_one(row: Array, start: Array, given: bool, settings: Array, out: Array
         for _ in range(64):
             if run_cycle(c, x, m, s, g, limits, a, True) != BEGAN:
                 break
-            limits[1] -= 0.0
     out[:] = 0.0
     load = row[P_ILOAD] + c[K_VSET] / row[P_RLOAD]
     _report(c, a, out)
@@ -238,7 +238,7 @@ def solve_one(row: Array, start: Array, given: bool, settings: Array, out: Array
         out[1] = period if ended == PERIODIC else -1.0
     else:
         out[3] = 0.0
-    out[5] = start_margin(row, c, s)
+    out[5] = margin
     out[49] = _residual(c, a, first, x)
     out[50] = 1.0 if ended != UNSETTLED else 0.0
     out[51] = g[0]

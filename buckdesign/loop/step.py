@@ -426,7 +426,8 @@ def _base_events(c: Array, m: Discrete, s: Array, order: int, h: float) -> tuple
 def _choke_event(c: Array, m: Discrete, s: Array, order: int, h: float) -> float:
     for n in range(order + 1):
         s[S_EVENT, n] = s[S_IL, n]
-    return _first_crossing(s, order, 0.0, 0.0, h, TINY * c[K_SC_I], _known_zeros(m[M_JUST], CHOKE_EMPTY))
+    drop = _known_zeros(m[M_JUST], CHOKE_EMPTY) if m[M_MODE] == ACTIVE else 0
+    return _first_crossing(s, order, 0.0, 0.0, h, TINY * c[K_SC_I], drop)
 
 
 @compiled
