@@ -32,13 +32,11 @@ DIMENSIONS = 4
 MEMORY = 4
 CLOSED = 2e-9
 MOST_PERIOD = 12
-# where a rest point is stable too, bursts may find it late: so many times more cycles are waited for it
-PATIENCE = 12
 
 PERIODIC, IRREGULAR, AT_REST, UNSETTLED = 0, 1, 2, 3
 
 # positions in the settings array
-O_PLAIN, O_ACCELERATED, O_MORE, O_WINDOW, O_STEPS, O_SPAN = range(6)
+O_PLAIN, O_ACCELERATED, O_MORE, O_WINDOW, O_STEPS, O_SPAN, O_PATIENCE = range(7)
 
 
 @compiled
@@ -304,7 +302,8 @@ def settle(
     plain = int(settings[O_PLAIN])
     total = plain + int(settings[O_MORE])
     if not started_by_itself:
-        total = plain + PATIENCE * int(settings[O_MORE])
+        # a rest point is stable too, and bursts may find it late
+        total = plain + int(settings[O_PATIENCE])
     next_attempt = plain
     n = 0
     while n < total:
