@@ -55,7 +55,7 @@ from .step import (
     CHARGE_ENOUGH,
     NODE_FALLS,
     NONE,
-    _turn_on,
+    turn_on,
     advance,
     available,
     change,
@@ -322,8 +322,8 @@ def resume(c: Array, z: Array, began: int, x: Array, m: Discrete, s: Array) -> N
             m[M_BOUND] = bound
             expand(c, x, m, s, 1)
             x[X_IR] = s[S_IR, 0]
-    if began != FROM_EMPTY and c[K_QRR] == 0.0:
-        _turn_on(c, x, m, s)
+    if began != FROM_EMPTY:
+        turn_on(c, x, m, s)
 
 
 @compiled

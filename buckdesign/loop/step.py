@@ -106,21 +106,42 @@ def _event_value(s: Array, low: int, order: int, decay: float, rate: float, t: f
 
 
 @compiled
+def _event_and_slope(s: Array, low: int, order: int, decay: float, rate: float, t: float) -> tuple[float, float]:
+    f = s[S_EVENT, order]
+    slope = 0.0
+    for n in range(order - 1, low - 1, -1):
+        slope = slope * t + f
+        f = f * t + s[S_EVENT, n]
+    if decay != 0.0:
+        part = decay * math.exp(-rate * t)
+        f += part
+        slope -= rate * part
+    return f, slope
+
+
+@compiled
+def _lowest(s: Array, low: int, order: int, decay: float, rate: float, left: float, right: float) -> float:
+    """Where the event function is lowest in an interval over which its slope turns from falling to rising."""
+    for _ in range(12):
+        t = 0.5 * (left + right)
+        f, slope = _event_and_slope(s, low, order, decay, rate, t)
+        if f < 0.0:
+            return t
+        if slope < 0.0:
+            left = t
+        else:
+            right = t
+    return 0.5 * (left + right)
+
+
+@compiled
 def _refine(s: Array, low: int, order: int, decay: float, rate: float, left: float, right: float) -> float:
     """The root in (left, right], where the event function changes from positive to negative."""
     f_left = _event_value(s, low, order, decay, rate, left)
     f_right = _event_value(s, low, order, decay, rate, right)
     t = left + (right - left) * f_left / (f_left - f_right)
     for _ in range(60):
-        f = s[S_EVENT, order]
-        slope = 0.0
-        for n in range(order - 1, low - 1, -1):
-            slope = slope * t + f
-            f = f * t + s[S_EVENT, n]
-        if decay != 0.0:
-            part = decay * math.exp(-rate * t)
-            f += part
-            slope -= rate * part
+        f, slope = _event_and_slope(s, low, order, decay, rate, t)
         if f > 0.0:
             left = t
         else:
@@ -168,13 +189,20 @@ def _first_crossing(s: Array, order: int, decay: float, rate: float, h: float, t
         if drop == 0 and (start < -tiny or (start <= tiny and s[S_EVENT, 1] - rate * decay < 0.0)):
             return 0.0
     previous = 0.0
+    falling = True
     for i in range(1, SAMPLES + 1):
         t = h * i / SAMPLES
-        if _event_value(s, low, order, decay, rate, t) < 0.0:
+        f, slope = _event_and_slope(s, low, order, decay, rate, t)
+        if f >= 0.0 and falling and slope > 0.0:
+            lowest = _lowest(s, low, order, decay, rate, previous, t)
+            if _event_value(s, low, order, decay, rate, lowest) < 0.0:
+                t, f = lowest, -1.0
+        if f < 0.0:
             if previous == 0.0 and decay != 0.0 and (drop > 0 or s[S_EVENT, 0] + decay <= tiny):
                 previous = 1e-9 * t
             return _refine(s, low, order, decay, rate, previous, t)
         previous = t
+        falling = slope < 0.0
     return np.inf
 
 
@@ -506,7 +534,7 @@ def _recovering_events(c: Array, m: Discrete, s: Array, order: int, h: float) ->
         h, event = t, RECOVERED_EARLY
     t = _choke_event(c, m, s, order, h)
     if t <= h:
-        h, event = t, SWEPT
+        h, event = t, CHOKE_EMPTY
     return h, event
 
 
@@ -635,9 +663,13 @@ def _rate_of_choke(c: Array, x: Array, m: Discrete, s: Array, mode: int) -> floa
 
 
 @compiled
-def _turn_on(c: Array, x: Array, m: Discrete, s: Array) -> None:
-    """The charge has caught up with the choke current: saturated or active."""
-    if _rate_of_available(c, x) > _rate_of_choke(c, x, m, s, SATURATED):
+def turn_on(c: Array, x: Array, m: Discrete, s: Array) -> None:
+    """The charge has caught up with the choke current: recovering, saturated or active."""
+    if c[K_QRR] > 0.0:
+        rises = _rate_of_available(c, x) > _rate_of_choke(c, x, m, s, RECOVERING)
+        m[M_MODE] = RECOVERING if rises else ACTIVE
+        x[X_SWEPT] = 0.0
+    elif _rate_of_available(c, x) > _rate_of_choke(c, x, m, s, SATURATED):
         m[M_MODE] = SATURATED
     else:
         m[M_MODE] = ACTIVE
@@ -652,13 +684,11 @@ def _switch_events(c: Array, x: Array, m: Discrete, s: Array, event: int) -> Non
         m[M_MODE] = FREEWHEEL if falls else ACTIVE
     elif event == CHARGE_ENOUGH:
         x[X_Q] = charge(c, x[X_IL])
-        if c[K_QRR] > 0.0:
-            m[M_MODE] = RECOVERING
-            x[X_SWEPT] = 0.0
-        else:
-            _turn_on(c, x, m, s)
+        turn_on(c, x, m, s)
     elif event == CHOKE_EMPTY:
         x[X_IL] = 0.0
+        if m[M_MODE] == RECOVERING:
+            return
         if m[M_MODE] == ACTIVE:
             x[X_Q] = 0.0
         if m[M_MODE] != SATURATED and x[X_IR] <= c[K_IBE]:
@@ -786,7 +816,7 @@ def classify(c: Array, x: Array, m: Discrete, s: Array) -> None:
         if _rate_of_available(c, x) < _rate_of_choke(c, x, m, s, FREEWHEEL):
             m[M_MODE] = FREEWHEEL
         else:
-            _turn_on(c, x, m, s)
+            turn_on(c, x, m, s)
     else:
         m[M_MODE] = SATURATED if gap > 0.0 else FREEWHEEL
     expand(c, x, m, s, 1)

@@ -188,6 +188,8 @@ def _passive_orders(c: Array, m: Discrete, s: Array, order: int) -> None:
     scale = 1.0 / divisor
     coupled = c[K_RHCH_INV] > 0.0
     biased = c[K_I0_INV] > 0.0 and mode != EMPTY
+    # a choke that runs empty while the rectifier recovers stays empty, the node at 0 V
+    emptied = mode == RECOVERING and s[S_IL, 0] == 0.0
     needs_iav = base and (mode == FREEWHEEL or mode == RECOVERING)
     for n in range(order):
         first = 1.0 if n == 0 else 0.0
@@ -231,7 +233,7 @@ def _passive_orders(c: Array, m: Discrete, s: Array, order: int) -> None:
             s[S_Q, n + 1] = (ir - first * c[K_IBE] - s[S_Q, n] * c[K_TAU_INV]) * over
         if mode == RECOVERING:
             s[S_SWEPT, n + 1] = (iav - il) * over
-        if mode == EMPTY:
+        if mode == EMPTY or emptied:
             continue
         drive = vsw - vout - c[K_RL] * il
         if biased:
