@@ -22,6 +22,9 @@ from buckdesign.cli.options import CONTEXT, QuickGroup
 PROGRAM = "buckdesign"
 
 COMMANDS: dict[str, str] = {
+    "design": "Design a supply from a requirement, simulate it over its range, check every limit.",
+    "simulate": "Simulate one operating point, or the start from rest.",
+    "choke": "Wind a choke, choose one, recognise a ring, show its bias curve.",
     "parts": "List, show and check part and core tables.",
 }
 """Command and its line in the list, in the order of the list; the command is `app` in ``cli/<name>.py``."""

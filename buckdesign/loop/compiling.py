@@ -13,11 +13,13 @@ import tempfile
 from collections.abc import Callable
 from functools import cache
 from pathlib import Path
-from typing import TypeVar
+from typing import Any, TypeVar
 
 import numba
 import numpy as np
 from numba import njit
+from numba.core import cgutils
+from numba.extending import intrinsic
 
 Function = TypeVar("Function", bound=Callable[..., object])
 
@@ -69,3 +71,19 @@ def compiled(function: Function) -> Function:
         )(function)
     finally:
         numba.config.CACHE_DIR = kept
+
+
+@intrinsic
+def lent(typing_context: Any, array: Any) -> Any:
+    """The same array without a share in its ownership, for use while its owner is held elsewhere.
+
+    Calls between compiled functions count references to the arrays that they pass, with an atomic operation each;
+    in the innermost loop that would cost a third of the time.
+    """
+
+    def generate(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
+        made = context.make_array(signature.return_type)(context, builder, arguments[0])
+        made.meminfo = cgutils.get_null_value(made.meminfo.type)
+        return made._getvalue()
+
+    return array(array), generate

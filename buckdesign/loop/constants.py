@@ -16,7 +16,9 @@ from .parameters import COLUMN
 Array = NDArray[np.float64]
 Discrete = NDArray[np.int64]
 
-ORDER = 14
+ORDER = 16
+TOLERANCE = 1e-10
+INVERSE = 1.0 / np.arange(1.0, ORDER + 2.0)
 
 # switch modes
 SATURATED, FREEWHEEL, ACTIVE, RECOVERING, EMPTY = 0, 1, 2, 3, 4
@@ -31,10 +33,16 @@ STATES = 6
 M_MODE, M_CLAMP, M_BOUND, M_BASE, M_LOAD, M_JUST = range(6)
 DISCRETES = 6
 
-(S_IL, S_VC, S_IR, S_Q, S_VH, S_SWEPT, S_VOUT, S_VSW, S_IAV, S_ER, S_FEED) = range(11)
+(S_IL, S_VC, S_IR, S_Q, S_VH, S_SWEPT, S_VOUT, S_VSW, S_IAV, S_ER) = range(10)
 # work rows: power of the current, inverse inductance, inductance, gain slope, di/dt, squares, root, choke voltage
-(S_POWER, S_INVERSE, S_INDUCT, S_SLOPE, S_RATE, S_SQUARE, S_ROOT, S_DRIVE, S_EVENT) = range(11, 20)
-ROWS = 20
+(S_POWER, S_INVERSE, S_INDUCT, S_SLOPE, S_RATE, S_SQUARE, S_ROOT, S_DRIVE, S_EVENT) = range(10, 19)
+# linear relations of the passive modes, three rows a discrete state, behind a row of their keys
+S_KEYS = 19
+# place in the row of keys of the factor by which an event function may miss zero at the start of a step
+AT_LOOSENESS = 16
+S_LINEAR = 20
+STATES_KEPT = 15
+ROWS = S_LINEAR + 3 * STATES_KEPT
 
 (
     K_VIN, K_VREF, K_IADJ, K_SELF, K_R1G, K_RH_INV, K_G_INV, K_R1_INV, K_LO_INV, K_RO, K_IQ, K_ILIM, K_IBE,

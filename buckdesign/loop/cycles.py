@@ -15,7 +15,6 @@ from .constants import (
     HELD_LOW,
     K_IBE,
     K_IQ,
-    K_QRR,
     K_RCE,
     K_RHCH_INV,
     K_SC_I,
@@ -55,13 +54,13 @@ from .step import (
     CHARGE_ENOUGH,
     NODE_FALLS,
     NONE,
-    turn_on,
     advance,
     available,
     change,
     charge,
     move,
     ruling_bound,
+    turn_on,
 )
 from .taylor import expand
 
@@ -69,6 +68,8 @@ BEGAN, RESTS, SPENT, TIME_UP = 0, 1, 2, 3
 # how a cycle began
 FROM_FREEWHEEL, FROM_EMPTY, FROM_NODE = 0, 1, 2
 
+# steps without a cycle after which a rest point is looked for, and how often
+REST_AFTER, REST_EVERY = 48, 12
 # counters kept in the progress array
 G_STEPS, G_TIME, G_STALLED, G_DISTANCE, G_BEGAN = range(5)
 PROGRESS = 5
@@ -268,9 +269,9 @@ def run_cycle(
                     a[A_COMMUTATIONS] += 1.0
                 return BEGAN
             if g[G_STALLED] > 12.0:
-                _nudge(c, x, m, s)
+                nudge(c, x, m, s)
                 elapsed += 1e-12
-        if steps >= 12 and steps % 6 == 0 and not accounts:
+        if steps >= REST_AFTER and steps % REST_EVERY == 0 and not accounts:
             distance = rest_point(c, x, m, s, target)
             if distance < 1e-7 and distance < g[G_DISTANCE]:
                 x[:] = target
@@ -279,7 +280,7 @@ def run_cycle(
 
 
 @compiled
-def _nudge(c: Array, x: Array, m: Discrete, s: Array) -> None:
+def nudge(c: Array, x: Array, m: Discrete, s: Array) -> None:
     """Break a stalemate of events at one instant by a picosecond of plain motion."""
     expand(c, x, m, s, 2)
     h = 1e-12

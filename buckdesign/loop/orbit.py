@@ -26,7 +26,7 @@ from .constants import (
     Array,
     Discrete,
 )
-from .cycles import BEGAN, FROM_EMPTY, FROM_NODE, G_BEGAN, PROGRESS, count_period, resume, run_cycle
+from .cycles import BEGAN, FROM_EMPTY, FROM_NODE, G_BEGAN, PROGRESS, RESTS, count_period, resume, run_cycle
 
 DIMENSIONS = 4
 MEMORY = 4
@@ -178,8 +178,8 @@ def _contracts(
     c: Array, z: Array, began: int, held: Discrete, repeats: int, s: Array, limits: Array, image: Array
 ) -> bool:
     """Whether the return map is a contraction at its fixed point ``z``."""
-    y = np.empty(DIMENSIONS)
     end = np.empty(DISCRETES, np.int64)
+    y = np.empty(DIMENSIONS)
     which = np.empty(DIMENSIONS, np.int64)
     n = 0
     for k in range(DIMENSIONS):
@@ -208,11 +208,12 @@ def _contracts(
 @compiled
 def close_orbit(
     c: Array, z: Array, began: int, held: Discrete, repeats: int, s: Array, limits: Array, most: int,
-    points: Array, images: Array, kept: int,
+    points: Array, images: Array, kept: int, surely: bool,
 ) -> bool:  # fmt: skip
     """Find a stable fixed point of the ``repeats``-fold return map, starting at ``z`` with a history of pairs.
 
-    On success ``z`` and ``held`` are the section point and its discrete state.
+    On success ``z`` and ``held`` are the section point and its discrete state. ``surely``: plain iteration
+    has been seen to contract, so that the derivative need not be looked at.
     """
     y = np.empty(DIMENSIONS)
     end = np.empty(DISCRETES, np.int64)
@@ -224,11 +225,11 @@ def close_orbit(
             return False
         residual = _apart(y, z)
         if residual < CLOSED:
+            if not (surely or _contracts(c, z, began, held, repeats, s, limits, y)):
+                return False
             z[:] = y
             held[:] = end
-            image = np.empty(DIMENSIONS)
-            begins = return_map(c, z, began, held, repeats, s, limits, image, end)
-            return begins == began and _contracts(c, z, began, held, repeats, s, limits, image)
+            return True
         if residual < 0.5 * best:
             bad = 0
             best = residual
@@ -281,6 +282,37 @@ def _find_period(trail: Array, kinds: Discrete, n: int, closeness: float) -> int
 
 
 @compiled
+def _history(trail: Array, kinds: Discrete, n: int, repeats: int, points: Array, images: Array) -> int:
+    """The last pairs of section point and image along the trail, oldest first; returns how many."""
+    kept = 0
+    began = kinds[(n - 1) % 64]
+    for k in range(MEMORY - 1, -1, -1):
+        j = n - 1 - (k + 1) * repeats
+        if j < 0 or j < n - 60:
+            continue
+        if kinds[j % 64] != began or kinds[(j + repeats) % 64] != began:
+            kept = 0
+            continue
+        points[kept] = trail[j % 64]
+        images[kept] = trail[(j + repeats) % 64]
+        kept += 1
+    return kept
+
+
+@compiled
+def _shrinks(trail: Array, kinds: Discrete, n: int, repeats: int) -> bool:
+    """Whether the last steps along the trail fell by at least 0.6 each."""
+    if n < 6 or repeats > 1:
+        return False
+    for k in range(1, 5):
+        late = _apart(trail[(n - k) % 64], trail[(n - k - 1) % 64])
+        early = _apart(trail[(n - k - 1) % 64], trail[(n - k - 2) % 64])
+        if late > 0.6 * early or kinds[(n - k) % 64] != kinds[(n - k - 1) % 64]:
+            return False
+    return True
+
+
+@compiled
 def settle(
     c: Array, x: Array, m: Discrete, s: Array, settings: Array, g: Array, started_by_itself: bool
 ) -> tuple[int, int]:
@@ -308,7 +340,7 @@ def settle(
     n = 0
     while n < total:
         status = run_cycle(c, x, m, s, g, limits, a, False)
-        if status == 1:
+        if status == RESTS:
             return AT_REST, 0
         if status != BEGAN:
             return UNSETTLED, 0
@@ -317,38 +349,25 @@ def settle(
         n += 1
         if n < next_attempt:
             continue
-        began = kinds[(n - 1) % 64]
+        next_attempt = 2 * n
         period = _find_period(trail, kinds, n, CLOSED)
         if period > 0:
             return PERIODIC, period
-        next_attempt = n + max(8, n // 2)
-        if began == FROM_NODE:
+        began = kinds[(n - 1) % 64]
+        repeats = 1 if n == plain else _find_period(trail, kinds, n, 0.1)
+        if began == FROM_NODE or repeats == 0:
             continue
-        repeats = 1
-        if n > plain:
-            repeats = _find_period(trail, kinds, n, 0.3)
-            if repeats == 0:
-                continue
-        kept = 0
-        for k in range(MEMORY - 1, -1, -1):
-            j = n - 1 - (k + 1) * repeats
-            if j < 0 or j < n - 60:
-                continue
-            if kinds[j % 64] != began or kinds[(j + repeats) % 64] != began:
-                kept = 0
-                continue
-            points[kept] = trail[j % 64]
-            images[kept] = trail[(j + repeats) % 64]
-            kept += 1
+        kept = _history(trail, kinds, n, repeats, points, images)
+        surely = _shrinks(trail, kinds, n, repeats)
+        newest = trail[(n - 1) % 64]
+        z[:] = newest
         if kept > 0:
             _mix(points, images, kept, z)
-            if not (_apart(z, trail[(n - 1) % 64]) < 30.0 * _apart(trail[(n - 1) % 64], trail[(n - 1 - repeats) % 64])):
-                z[:] = trail[(n - 1) % 64]
-        else:
-            z[:] = trail[(n - 1) % 64]
+            if not (_apart(z, newest) < 30.0 * _apart(newest, trail[(n - 1 - repeats) % 64])):
+                z[:] = newest
         held[:] = m
         most = int(settings[O_ACCELERATED])
-        if close_orbit(c, z, began, held, repeats, s, limits, most, points, images, kept):
+        if close_orbit(c, z, began, held, repeats, s, limits, most, points, images, kept, surely):
             _unscale(c, z, raw)
             m[:] = held
             resume(c, raw, began, x, m, s)

@@ -58,9 +58,9 @@ class Effort:
         Longest time between two cycles [s].
     """
 
-    plain: int = 12
-    accelerated: int = 24
-    more: int = 200
+    plain: int = 6
+    accelerated: int = 20
+    more: int = 64
     patience: int = 600
     window: int = 64
     steps: int = 20000
@@ -74,7 +74,7 @@ class Effort:
 
 
 STUDY = Effort()
-DETAILED = Effort(plain=24, more=600, patience=4000, window=500, steps=100000)
+DETAILED = Effort(more=620, patience=4000, window=500, steps=100000)
 
 
 @dataclass(frozen=True, kw_only=True)

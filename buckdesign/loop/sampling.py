@@ -28,7 +28,7 @@ from .constants import (
     Array,
     Discrete,
 )  # fmt: skip
-from .cycles import count_period
+from .cycles import count_period, nudge
 from .step import NONE, advance, available, change, move, value
 
 # columns of a recording
@@ -37,6 +37,7 @@ SAMPLES = (
     "rectifier_current_a", "capacitor_voltage_v", "base_charge_c", "coupling_voltage_v", "mode",
 )  # fmt: skip
 WIDTH = len(SAMPLES)
+MOST_STEPS = 2_000_000
 
 
 @compiled
@@ -80,8 +81,10 @@ def record(
     clock = 0.0
     begun = 0
     stalled = 0
-    while clock < span and begun < cycles:
+    steps = 0
+    while clock < span and steps < MOST_STEPS and begun < cycles:
         h, event, which, decay = advance(c, x, m, s, span - clock)
+        steps += 1
         if h > 0.0:
             points = max(per_step, min(int(h / spacing) + 1, 400))
             for k in range(points + 1):
@@ -95,8 +98,8 @@ def record(
             stalled = 0
         else:
             stalled += 1
-            if stalled > 50:
-                return filled, clock, begun
+            if stalled > 12:
+                nudge(c, x, m, s)
         if event != NONE and change(c, x, m, s, event, which, h):
             begun += 1
     return filled, clock, begun
@@ -115,8 +118,10 @@ def cycle_starts(
     last = 0.0
     begun = 0
     stalled = 0
-    while clock < span and begun < cycles:
+    steps = 0
+    while clock < span and steps < MOST_STEPS and begun < cycles:
         h, event, which, decay = advance(c, x, m, s, span - clock)
+        steps += 1
         if h > 0.0:
             account(c, m, s, h, a)
             move(c, x, m, s, h, decay)
@@ -124,8 +129,8 @@ def cycle_starts(
             stalled = 0
         else:
             stalled += 1
-            if stalled > 50:
-                return begun
+            if stalled > 12:
+                nudge(c, x, m, s)
         if event != NONE and change(c, x, m, s, event, which, h):
             times[begun] = clock
             states[begun] = x

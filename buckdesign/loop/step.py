@@ -15,6 +15,7 @@ import numpy as np
 from .compiling import compiled
 from .constants import (
     ACTIVE,
+    AT_LOOSENESS,
     BOUND_CONSTANT,
     BOUND_DRIVE,
     BOUND_FAR,
@@ -55,6 +56,7 @@ from .constants import (
     S_IAV,
     S_IL,
     S_IR,
+    S_KEYS,
     S_Q,
     S_SQUARE,
     S_SWEPT,
@@ -63,6 +65,7 @@ from .constants import (
     S_VOUT,
     S_VSW,
     SATURATED,
+    TOLERANCE,
     UNHELD,
     X_IL,
     X_IR,
@@ -75,9 +78,9 @@ from .constants import (
 )  # fmt: skip
 from .taylor import SMALL_BIAS, bound_line, expand, square
 
-TOLERANCE = 1e-11
 TINY = 1e-13
-SAMPLES = 5
+AFTER_EVENT = 1e4
+SAMPLES = 3
 
 (
     NONE, LEAVE_LOW, REACH_LOW, REACH_HIGH, LEAVE_HIGH, OTHER_BOUND, BOUND_BELOW, PINNED_FALLS, PINNED_RISES,
@@ -140,54 +143,27 @@ def _refine(s: Array, low: int, order: int, decay: float, rate: float, left: flo
     f_left = _event_value(s, low, order, decay, rate, left)
     f_right = _event_value(s, low, order, decay, rate, right)
     t = left + (right - left) * f_left / (f_left - f_right)
+    close = 2e-15 * right
     for _ in range(60):
         f, slope = _event_and_slope(s, low, order, decay, rate, t)
         if f > 0.0:
             left = t
         else:
             right = t
-        if right - left <= 2e-16 * right or f == 0.0:
-            break
         guess = t - f / slope if slope != 0.0 else left
+        if abs(guess - t) <= close or right - left <= close:
+            break
         if not (left < guess < right):
             guess = 0.5 * (left + right)
-        if abs(guess - t) <= 4e-16 * t:
-            t = guess
-            break
         t = guess
     return t
 
 
 @compiled
-def _first_crossing(s: Array, order: int, decay: float, rate: float, h: float, tiny: float, drop: int) -> float:
-    """First time in [0, h] at which the event function turns negative; infinite when it does not.
-
-    ``drop`` leading coefficients are known to vanish, because the step begins at the event's opposite.
-    """
-    low = 0
-    power = 1.0
-    if decay == 0.0:
-        # the first of them is zero, the second cannot be negative but for rounding
-        while low < drop and (low == 0 or s[S_EVENT, low] <= 0.0):
-            low += 1
-            power *= h
-        while low <= order and abs(s[S_EVENT, low]) * power <= tiny:
-            low += 1
-            power *= h
-        if low > order:
-            return np.inf
-        lead = s[S_EVENT, low]
-        if lead < 0.0:
-            return 0.0
-        rest = 0.0
-        for n in range(order, low, -1):
-            rest = (rest + abs(s[S_EVENT, n])) * h
-        if lead > rest:
-            return np.inf
-    else:
-        start = s[S_EVENT, 0] + decay
-        if drop == 0 and (start < -tiny or (start <= tiny and s[S_EVENT, 1] - rate * decay < 0.0)):
-            return 0.0
+def _search(
+    s: Array, low: int, order: int, decay: float, rate: float, h: float, known: bool
+) -> float:
+    """First root by sampling, with a look for dips between the samples; infinite where there is none."""
     previous = 0.0
     falling = True
     for i in range(1, SAMPLES + 1):
@@ -198,12 +174,75 @@ def _first_crossing(s: Array, order: int, decay: float, rate: float, h: float, t
             if _event_value(s, low, order, decay, rate, lowest) < 0.0:
                 t, f = lowest, -1.0
         if f < 0.0:
-            if previous == 0.0 and decay != 0.0 and (drop > 0 or s[S_EVENT, 0] + decay <= tiny):
+            if previous == 0.0 and known:
                 previous = 1e-9 * t
             return _refine(s, low, order, decay, rate, previous, t)
         previous = t
         falling = slope < 0.0
     return np.inf
+
+
+@compiled
+def _first_crossing(s: Array, order: int, h: float, tiny: float, drop: int) -> float:
+    """First time in [0, h] at which the event polynomial turns negative; infinite when it does not.
+
+    ``drop`` leading coefficients are known to vanish, because the step begins at the event's opposite.
+    """
+    low = 0
+    power = 1.0
+    # the first of them is zero, the second cannot be negative but for rounding
+    while low < drop and (low == 0 or s[S_EVENT, low] <= 0.0):
+        low += 1
+        power *= h
+    if low == 0 and abs(s[S_EVENT, 0]) <= tiny * s[S_KEYS, AT_LOOSENESS]:
+        low = 1
+        power = h
+    while low <= order and abs(s[S_EVENT, low]) * power <= tiny:
+        low += 1
+        power *= h
+    if low > order:
+        return np.inf
+    lead = s[S_EVENT, low]
+    if lead < 0.0:
+        return 0.0
+    rest = 0.0
+    bend = 0.0
+    for n in range(order, low, -1):
+        size = abs(s[S_EVENT, n])
+        rest = (rest + size) * h
+        if n > low + 1:
+            bend = (bend + (n - low) * size) * h
+    if lead > rest:
+        return np.inf
+    if low < order and abs(s[S_EVENT, low + 1]) >= bend:
+        if s[S_EVENT, low + 1] > 0.0 or _event_value(s, low, order, 0.0, 0.0, h) >= 0.0:
+            return np.inf
+        return _refine(s, low, order, 0.0, 0.0, 0.0, h)
+    return _search(s, low, order, 0.0, 0.0, h, False)
+
+
+@compiled
+def _first_shortage(s: Array, order: int, decay: float, rate: float, h: float, tiny: float, drop: int) -> float:
+    """`_first_crossing` for an event polynomial with an added ``decay * exp(-rate t)``."""
+    start = s[S_EVENT, 0] + decay
+    if drop == 0 and (start < -tiny or (start <= tiny and s[S_EVENT, 1] - rate * decay < 0.0)):
+        return 0.0
+    if start > 0.0:
+        rest = 0.0
+        for n in range(order, 0, -1):
+            rest = (rest + abs(s[S_EVENT, n])) * h
+        if s[S_EVENT, 0] + min(decay, 0.0) > rest:
+            return np.inf
+    return _search(s, 0, order, decay, rate, h, drop > 0 or start <= tiny)
+
+
+@compiled
+def _spread(s: Array, row: int, order: int, h: float) -> float:
+    """How far a row can move within the step."""
+    rest = 0.0
+    for n in range(order, 0, -1):
+        rest = (rest + abs(s[row, n])) * h
+    return rest
 
 
 @compiled
@@ -215,7 +254,9 @@ def _known_zeros(just: int, event: int) -> int:
         return 2
     if (just == TO_SATURATION and event == CHARGE_SHORT) or (just == TO_FREEWHEEL and event == CHARGE_ENOUGH):
         return 2
-    if just == BASE_ON and (event == BASE_OFF or event == CHOKE_EMPTY):
+    if (just == BASE_ON and (event == BASE_OFF or event == CHOKE_EMPTY)) or (
+        just == NODE_FALLS and event == CHOKE_EMPTY
+    ):
         return 2
     if just == CHARGE_ENOUGH and (event == CHARGE_SHORT or event == RECOVERED_EARLY):
         return 1
@@ -319,12 +360,12 @@ def _leave_high(c: Array, m: Discrete, s: Array, order: int, h: float) -> float:
         for n in range(order):
             s[S_EVENT, n] = s[S_ER, n]
         s[S_EVENT, order] = 0.0
-        first = _first_crossing(s, order - 1, 0.0, 0.0, h, TINY, 0)
+        first = _first_crossing(s, order - 1, h, TINY, 0)
         if s[S_IR, 1] <= 0.0:
             return first
     for n in range(order - 1):
         s[S_EVENT, n] = s[S_ER, n] * c[K_LO_INV] - (n + 1.0) * s[S_IR, n + 1]
-    return min(first, _first_crossing(s, order - 2, 0.0, 0.0, h, TINY * c[K_LO_INV], 0))
+    return min(first, _first_crossing(s, order - 2, h, TINY * c[K_LO_INV], 0))
 
 
 @compiled
@@ -335,7 +376,7 @@ def _reach_bound(c: Array, m: Discrete, s: Array, bound: int, order: int, h: flo
     if drop > 0 and m[M_MODE] != ACTIVE and s[S_ER, 1] < 0.0:
         t = 0.0
     else:
-        t = _first_crossing(s, order - 1, 0.0, 0.0, h, TINY * c[K_SC_IR], drop)
+        t = _first_crossing(s, order - 1, h, TINY * c[K_SC_IR], drop)
     if t > h or m[M_CLAMP] == HELD_HIGH or m[M_MODE] == ACTIVE:
         return t
     if value(s, S_ER, order - 1, t) > 0.0 and not (t == 0.0 and drop > 0):
@@ -344,7 +385,7 @@ def _reach_bound(c: Array, m: Discrete, s: Array, bound: int, order: int, h: flo
         s[S_EVENT, n] = -s[S_ER, n]
     if t == 0.0 and drop > 0:
         s[S_EVENT, 0] = 0.0
-    later = _first_crossing(s, order - 1, 0.0, 0.0, h, TINY, 1 if t == 0.0 and drop > 0 else 0)
+    later = _first_crossing(s, order - 1, h, TINY, 1 if t == 0.0 and drop > 0 else 0)
     if later > h or later < t:
         return np.inf
     a, b = bound_line(c, bound)
@@ -364,7 +405,7 @@ def _fold_change(c: Array, m: Discrete, s: Array, order: int, h: float) -> tuple
         s[S_EVENT, n] = sign * b * s[S_VOUT, n]
     s[S_EVENT, 0] += sign * (a - far)
     other = BOUND_FAR if m[M_BOUND] == BOUND_FOLD else BOUND_FOLD
-    return _first_crossing(s, order - 1, 0.0, 0.0, h, TINY * c[K_SC_IR], 0), other
+    return _first_crossing(s, order - 1, h, TINY * c[K_SC_IR], 0), other
 
 
 @compiled
@@ -379,7 +420,7 @@ def _clamp_events(c: Array, m: Discrete, s: Array, order: int, h: float) -> tupl
         for n in range(order):
             s[S_EVENT, n] = sign * s[S_ER, n]
         s[S_EVENT, order] = 0.0
-        t = _first_crossing(s, order - 1, 0.0, 0.0, h, TINY, 0)
+        t = _first_crossing(s, order - 1, h, TINY, 0)
         if t <= h:
             h = t
             event = LEAVE_LOW if clamp == HELD_LOW else PINNED_FALLS
@@ -389,14 +430,18 @@ def _clamp_events(c: Array, m: Discrete, s: Array, order: int, h: float) -> tupl
             for n in range(order):
                 s[S_EVENT, n] = -b * s[S_VOUT, n]
             s[S_EVENT, 0] += c[K_IQ] - a
-            t = _first_crossing(s, order - 1, 0.0, 0.0, h, tiny_i, 0)
+            t = _first_crossing(s, order - 1, h, tiny_i, 0)
             if t <= h:
                 h, event, which = t, PINNED_RISES, bound
         return h, event, which
-    for n in range(order + 1):
-        s[S_EVENT, n] = s[S_IR, n]
-    s[S_EVENT, 0] -= c[K_IQ]
-    t = _first_crossing(s, order if clamp == UNHELD else order - 1, 0.0, 0.0, h, tiny_i, _known_zeros(m[M_JUST], REACH_LOW))
+    top = order if clamp == UNHELD else order - 1
+    move_i = _spread(s, S_IR, top, h)
+    t = np.inf
+    if s[S_IR, 0] - c[K_IQ] <= move_i:
+        for n in range(order + 1):
+            s[S_EVENT, n] = s[S_IR, n]
+        s[S_EVENT, 0] -= c[K_IQ]
+        t = _first_crossing(s, top, h, tiny_i, _known_zeros(m[M_JUST], REACH_LOW))
     if t <= h:
         h = t
         event = REACH_LOW if clamp == UNHELD else BOUND_BELOW
@@ -412,12 +457,16 @@ def _clamp_events(c: Array, m: Discrete, s: Array, order: int, h: float) -> tupl
         return h, event, which
     reach = REACH_HIGH if clamp == UNHELD else OTHER_BOUND
     limit = _limit_bound(c, s[S_VOUT, 0])
+    move_v = _spread(s, S_VOUT, order - 1, h)
     for bound in range(BOUND_CONSTANT, BOUND_FAR + 1):
         if bound == BOUND_OFF or (clamp == HELD_HIGH and bound == m[M_BOUND]):
             continue
         if bound != BOUND_DRIVE and bound != limit and (c[K_FOLDS] == 0.0 or m[M_BOUND] == BOUND_DRIVE):
             continue
         if bound == BOUND_FAR and bound != limit:
+            continue
+        a, b = bound_line(c, bound)
+        if a + b * s[S_VOUT, 0] - s[S_IR, 0] > move_i + abs(b) * move_v:
             continue
         t = _reach_bound(c, m, s, bound, order, h)
         if t <= h and (bound == BOUND_DRIVE or bound == limit or t > 0.0):
@@ -435,16 +484,20 @@ def _base_events(c: Array, m: Discrete, s: Array, order: int, h: float) -> tuple
     if m[M_BASE] == 0:
         if m[M_CLAMP] == UNHELD or m[M_CLAMP] == HELD_HIGH:
             top = order if m[M_CLAMP] == UNHELD else order - 1
+            if c[K_IBE] - s[S_IR, 0] > _spread(s, S_IR, top, h):
+                return h, event
             for n in range(order + 1):
                 s[S_EVENT, n] = -s[S_IR, n]
             s[S_EVENT, 0] += c[K_IBE]
-            t = _first_crossing(s, top, 0.0, 0.0, h, TINY * c[K_SC_IR], 0)
+            t = _first_crossing(s, top, h, TINY * c[K_SC_IR], 0)
             if t <= h:
                 h, event = t, BASE_ON
     elif m[M_MODE] == FREEWHEEL or m[M_MODE] == EMPTY:
+        if s[S_Q, 0] > _spread(s, S_Q, order, h):
+            return h, event
         for n in range(order + 1):
             s[S_EVENT, n] = s[S_Q, n]
-        t = _first_crossing(s, order, 0.0, 0.0, h, TINY * c[K_SC_Q], _known_zeros(m[M_JUST], BASE_OFF))
+        t = _first_crossing(s, order, h, TINY * c[K_SC_Q], _known_zeros(m[M_JUST], BASE_OFF))
         if t <= h:
             h, event = t, BASE_OFF
     return h, event
@@ -452,10 +505,12 @@ def _base_events(c: Array, m: Discrete, s: Array, order: int, h: float) -> tuple
 
 @compiled
 def _choke_event(c: Array, m: Discrete, s: Array, order: int, h: float) -> float:
+    if s[S_IL, 0] > _spread(s, S_IL, order, h):
+        return np.inf
     for n in range(order + 1):
         s[S_EVENT, n] = s[S_IL, n]
-    drop = _known_zeros(m[M_JUST], CHOKE_EMPTY) if m[M_MODE] == ACTIVE else 0
-    return _first_crossing(s, order, 0.0, 0.0, h, TINY * c[K_SC_I], drop)
+    drop = _known_zeros(m[M_JUST], CHOKE_EMPTY) if s[S_IL, 0] == 0.0 else 0
+    return _first_crossing(s, order, h, TINY * c[K_SC_I], drop)
 
 
 @compiled
@@ -467,13 +522,22 @@ def _saturated_events(c: Array, m: Discrete, s: Array, order: int, h: float) -> 
         decay = _charge_by_exponential(c, s, order)
     event = NONE
     ratio = c[K_TAU] / c[K_BETA]
+    most = s[S_IL, 0] + _spread(s, S_IL, order, h)
+    least = s[S_Q, 0] + min(decay, decay * math.exp(-c[K_TAU_INV] * h)) - _spread(s, S_Q, order, h)
+    if least > ratio * most * (1.0 + c[K_IK_INV] * most):
+        t = _choke_event(c, m, s, order, h)
+        return (t, CHOKE_EMPTY, decay) if t <= h else (h, NONE, decay)
     for n in range(order + 1):
         needed = s[S_IL, n]
         if c[K_IK_INV] > 0.0:
             square(s, n)
             needed += c[K_IK_INV] * s[S_SQUARE, n]
         s[S_EVENT, n] = s[S_Q, n] - ratio * needed
-    t = _first_crossing(s, order, decay, c[K_TAU_INV], h, TINY * c[K_SC_Q], _known_zeros(m[M_JUST], CHARGE_SHORT))
+    drop = _known_zeros(m[M_JUST], CHARGE_SHORT)
+    if decay == 0.0:
+        t = _first_crossing(s, order, h, TINY * c[K_SC_Q], drop)
+    else:
+        t = _first_shortage(s, order, decay, c[K_TAU_INV], h, TINY * c[K_SC_Q], drop)
     if t <= h:
         h, event = t, CHARGE_SHORT
     t = _choke_event(c, m, s, order, h)
@@ -491,7 +555,7 @@ def _freewheel_events(c: Array, m: Discrete, s: Array, order: int, h: float) -> 
     if m[M_BASE] == 1:
         for n in range(order):
             s[S_EVENT, n] = s[S_IL, n] - s[S_IAV, n]
-        t = _first_crossing(s, order - 1, 0.0, 0.0, h, TINY * c[K_SC_I], _known_zeros(m[M_JUST], CHARGE_ENOUGH))
+        t = _first_crossing(s, order - 1, h, TINY * c[K_SC_I], _known_zeros(m[M_JUST], CHARGE_ENOUGH))
         if t <= h:
             h, event = t, CHARGE_ENOUGH
     return h, event
@@ -503,13 +567,13 @@ def _active_events(c: Array, m: Discrete, s: Array, order: int, h: float) -> tup
     for n in range(order):
         s[S_EVENT, n] = -c[K_RCE] * s[S_IL, n] - s[S_VSW, n]
     s[S_EVENT, 0] += c[K_VIN] - c[K_VCE0]
-    t = _first_crossing(s, order - 1, 0.0, 0.0, h, TINY, 0)
+    t = _first_crossing(s, order - 1, h, TINY, 0)
     if t <= h:
         h, event = t, TO_SATURATION
     for n in range(order):
         s[S_EVENT, n] = s[S_VSW, n]
     s[S_EVENT, 0] += c[K_VD0]
-    t = _first_crossing(s, order - 1, 0.0, 0.0, h, TINY, 0)
+    t = _first_crossing(s, order - 1, h, TINY, 0)
     if t <= h:
         h, event = t, TO_FREEWHEEL
     t = _choke_event(c, m, s, order, h)
@@ -524,12 +588,12 @@ def _recovering_events(c: Array, m: Discrete, s: Array, order: int, h: float) ->
     for n in range(order + 1):
         s[S_EVENT, n] = -s[S_SWEPT, n]
     s[S_EVENT, 0] += c[K_QRR]
-    t = _first_crossing(s, order, 0.0, 0.0, h, TINY * c[K_QRR], 0)
+    t = _first_crossing(s, order, h, TINY * c[K_QRR], 0)
     if t <= h:
         h, event = t, SWEPT
     for n in range(order):
         s[S_EVENT, n] = s[S_IAV, n] - s[S_IL, n]
-    t = _first_crossing(s, order - 1, 0.0, 0.0, h, TINY * c[K_SC_I], _known_zeros(m[M_JUST], RECOVERED_EARLY))
+    t = _first_crossing(s, order - 1, h, TINY * c[K_SC_I], _known_zeros(m[M_JUST], RECOVERED_EARLY))
     if t <= h:
         h, event = t, RECOVERED_EARLY
     t = _choke_event(c, m, s, order, h)
@@ -546,7 +610,7 @@ def _node_event(c: Array, m: Discrete, s: Array, order: int, h: float) -> tuple[
     for n in range(order):
         s[S_EVENT, n] = s[S_VOUT, n]
     s[S_EVENT, 0] -= c[K_VIN] - c[K_VCE0]
-    t = _first_crossing(s, order - 1, 0.0, 0.0, h, TINY, 0)
+    t = _first_crossing(s, order - 1, h, TINY, 0)
     if t <= h:
         return t, NODE_FALLS
     return h, NONE
@@ -556,18 +620,20 @@ def _node_event(c: Array, m: Discrete, s: Array, order: int, h: float) -> tuple[
 def _load_event(m: Discrete, s: Array, order: int, h: float) -> float:
     """Time at which the output voltage leaves its segment of the load."""
     first = np.inf
+    if m[M_LOAD] == 0 and s[S_VOUT, 0] - 0.5 > _spread(s, S_VOUT, order - 1, h):
+        return first
     if m[M_LOAD] != 2:
         for n in range(order):
             s[S_EVENT, n] = s[S_VOUT, n]
         if m[M_LOAD] == 0:
             s[S_EVENT, 0] -= 0.5
-        first = _first_crossing(s, order - 1, 0.0, 0.0, h, TINY, 0)
+        first = _first_crossing(s, order - 1, h, TINY, 0)
     if m[M_LOAD] != 0:
         for n in range(order):
             s[S_EVENT, n] = -s[S_VOUT, n]
         if m[M_LOAD] == 1:
             s[S_EVENT, 0] += 0.5
-        first = min(first, _first_crossing(s, order - 1, 0.0, 0.0, h, TINY, 0))
+        first = min(first, _first_crossing(s, order - 1, h, TINY, 0))
     return first
 
 
@@ -578,6 +644,8 @@ def advance(c: Array, x: Array, m: Discrete, s: Array, limit: float) -> tuple[fl
     Leaves the coefficients of the step in ``s``; ``x`` is not changed.
     """
     order = ORDER
+    # the state after an event meets the event's condition only to the accuracy of the last step
+    s[S_KEYS, AT_LOOSENESS] = 1.0 if m[M_JUST] == NONE else AFTER_EVENT
     expand(c, x, m, s, order)
     h = _length(c, m, s, order, limit)
     h, event, which = _clamp_events(c, m, s, order, h)
@@ -751,11 +819,11 @@ def segment_of(vout: float) -> int:
 
 
 @compiled
-def _next_segment(m: Discrete, s: Array, h: float) -> int:
+def _next_segment(m: Discrete, s: Array, order: int, h: float) -> int:
     """The segment entered where the output voltage stands at the edge of its own."""
-    v = value(s, S_VOUT, ORDER - 1, h)
+    v = value(s, S_VOUT, order - 1, h)
     slope = 0.0
-    for n in range(ORDER - 1, 0, -1):
+    for n in range(order - 1, 0, -1):
         slope = slope * h + n * s[S_VOUT, n]
     edge = 0.5 if abs(v - 0.5) < abs(v) else 0.0
     rising = slope > 0.0
@@ -785,7 +853,7 @@ def change(c: Array, x: Array, m: Discrete, s: Array, event: int, which: int, h:
     off = m[M_MODE] == FREEWHEEL or m[M_MODE] == EMPTY
     before = x[X_IR]
     if event == LOAD_SEGMENT:
-        m[M_LOAD] = _next_segment(m, s, h)
+        m[M_LOAD] = _next_segment(m, s, ORDER, h)
     elif event == BASE_ON or event == BASE_OFF:
         _base_changes(c, x, m, s, event)
     elif event <= PINNED_RISES:

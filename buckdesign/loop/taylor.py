@@ -9,6 +9,8 @@ event function is a polynomial in time.
 
 from __future__ import annotations
 
+import numpy as np
+
 from .compiling import compiled
 from .constants import (
     ACTIVE,
@@ -19,6 +21,7 @@ from .constants import (
     EMPTY,
     FREEWHEEL,
     HELD_HIGH,
+    INVERSE,
     K_BETA,
     K_C_INV,
     K_ESR,
@@ -64,12 +67,13 @@ from .constants import (
     RECOVERING,
     S_DRIVE,
     S_ER,
-    S_FEED,
     S_IAV,
     S_IL,
     S_INDUCT,
     S_INVERSE,
     S_IR,
+    S_KEYS,
+    S_LINEAR,
     S_POWER,
     S_Q,
     S_RATE,
@@ -151,9 +155,12 @@ def _available_current(c: Array, s: Array, n: int) -> None:
         s[S_ROOT, 0] = root
         s[S_IAV, 0] = 2.0 * flow / (1.0 + root)
     else:
-        total = 4.0 * knee * flow
-        for j in range(1, n):
-            total -= s[S_ROOT, j] * s[S_ROOT, n - j]
+        total = 0.0
+        for j in range(1, (n + 1) // 2):
+            total += s[S_ROOT, j] * s[S_ROOT, n - j]
+        total = 4.0 * knee * flow - 2.0 * total
+        if n % 2 == 0:
+            total -= s[S_ROOT, n // 2] ** 2
         s[S_ROOT, n] = total / (2.0 * s[S_ROOT, 0])
         s[S_IAV, n] = s[S_ROOT, n] / (2.0 * knee)
 
@@ -162,9 +169,82 @@ def _available_current(c: Array, s: Array, n: int) -> None:
 def square(s: Array, n: int) -> None:
     """Order ``n`` of the square of the choke current."""
     total = 0.0
-    for j in range(n + 1):
+    for j in range((n + 1) // 2):
         total += s[S_IL, j] * s[S_IL, n - j]
+    total *= 2.0
+    if n % 2 == 0:
+        total += s[S_IL, n // 2] ** 2
     s[S_SQUARE, n] = total
+
+
+@compiled
+def _relate(c: Array, m: Discrete, inputs: Array, out: Array) -> None:
+    """The linear relations of a passive mode for one set of inputs.
+
+    ``inputs``: i_L, v_C, i_R, v_H, i_av, 1. ``out``: choke voltage [V], dv_C/dt, di_R/dt (or i_R itself where it is
+    held), dv_H/dt, v_out, v_sw, ``e - R_o i_R``.
+    """
+    mode = m[M_MODE]
+    il, vc, ir, vh, iav, one = inputs[0], inputs[1], inputs[2], inputs[3], inputs[4], inputs[5]
+    load_a, load_b = load_line(c, m[M_LOAD])
+    free = m[M_CLAMP] == UNHELD
+    held_a = c[K_IQ]
+    held_b = 0.0
+    if m[M_CLAMP] == HELD_HIGH:
+        held_a, held_b = bound_line(c, m[M_BOUND])
+    esr = c[K_ESR]
+    feed = esr * c[K_R1G] * c[K_RH_INV]
+    divisor = 1.0 + esr * (load_b + c[K_SELF] * c[K_R1_INV])
+    known = vc + esr * il - feed * vh + one * esr * (c[K_IADJ] * c[K_R1G] - load_a)
+    vsw = 0.0
+    if mode == SATURATED:
+        vsw = one * (c[K_VIN] - c[K_VCE0]) - c[K_RCE] * il
+    elif mode == FREEWHEEL:
+        vsw = -one * c[K_VD0] - c[K_RD] * (il - iav)
+    elif mode == EMPTY:
+        divisor -= feed
+    known += feed * vsw
+    if free:
+        vout = (known + esr * ir) / divisor
+    else:
+        vout = (known + one * esr * held_a) / (divisor - esr * held_b)
+        ir = one * held_a + held_b * vout
+    if mode == EMPTY:
+        vsw = vout
+    back = ((vsw - vh) * c[K_RH_INV] + one * c[K_IADJ]) * c[K_G_INV]
+    rest = one * c[K_VREF] - c[K_SELF] * vout + back - c[K_RO] * ir
+    out[0] = 0.0 if mode == EMPTY else vsw - vout - c[K_RL] * il
+    out[1] = (il + ir - one * load_a - load_b * vout - (c[K_SELF] * vout - back) * c[K_R1_INV]) * c[K_C_INV]
+    out[2] = rest * c[K_LO_INV] if free else ir
+    out[3] = (vsw - vh - vout * (1.0 - c[K_SELF]) - back) * c[K_RHCH_INV]
+    out[4] = vout
+    out[5] = vsw
+    out[6] = rest
+
+
+@compiled
+def _linear_relations(c: Array, m: Discrete, s: Array) -> int:
+    """Row of ``s`` from which the relations of a discrete state stand, worked out on their first use.
+
+    Seven relations of six inputs each, one after the other, over three rows.
+    """
+    hold = 0 if m[M_CLAMP] == UNHELD else (2 if m[M_CLAMP] == HELD_HIGH else 1)
+    slot = 3 * m[M_MODE] + hold
+    key = 1.0 + m[M_BOUND] * hold + 8.0 * m[M_LOAD]
+    row = S_LINEAR + 3 * slot
+    if s[S_KEYS, slot] == key:
+        return row
+    s[S_KEYS, slot] = key
+    inputs = np.zeros(6)
+    out = np.empty(7)
+    for k in range(6):
+        inputs[:] = 0.0
+        inputs[k] = 1.0
+        _relate(c, m, inputs, out)
+        for i in range(7):
+            place = 6 * i + k
+            s[row + place // 14, place % 14] = out[i]
+    return row
 
 
 @compiled
@@ -173,78 +253,85 @@ def _passive_orders(c: Array, m: Discrete, s: Array, order: int) -> None:
     mode = m[M_MODE]
     base = m[M_BASE] == 1
     free = m[M_CLAMP] == UNHELD
-    load_a, load_b = load_line(c, m[M_LOAD])
-    held_a = c[K_IQ]
-    held_b = 0.0
-    if m[M_CLAMP] == HELD_HIGH:
-        held_a, held_b = bound_line(c, m[M_BOUND])
-    esr = c[K_ESR]
-    feed = esr * c[K_R1G] * c[K_RH_INV]
-    divisor = 1.0 + esr * (load_b + c[K_SELF] * c[K_R1_INV])
-    if mode == EMPTY:
-        divisor -= feed
-    if not free:
-        divisor -= esr * held_b
-    scale = 1.0 / divisor
-    coupled = c[K_RHCH_INV] > 0.0
-    biased = c[K_I0_INV] > 0.0 and mode != EMPTY
     # a choke that runs empty while the rectifier recovers stays empty, the node at 0 V
-    emptied = mode == RECOVERING and s[S_IL, 0] == 0.0
+    still = mode == EMPTY or (mode == RECOVERING and s[S_IL, 0] == 0.0)
+    biased = c[K_I0_INV] > 0.0 and not still
     needs_iav = base and (mode == FREEWHEEL or mode == RECOVERING)
+    row = _linear_relations(c, m, s)
+    l_l, l_c, l_r, l_h, l_a, l_1 = s[row, 0], s[row, 1], s[row, 2], s[row, 3], s[row, 4], s[row, 5]
+    c_l, c_c, c_r, c_h, c_a, c_1 = s[row, 6], s[row, 7], s[row, 8], s[row, 9], s[row, 10], s[row, 11]
+    r_l, r_c = s[row, 12], s[row, 13]
+    r_r, r_h, r_a, r_1 = s[row + 1, 0], s[row + 1, 1], s[row + 1, 2], s[row + 1, 3]
+    h_l, h_c, h_r, h_h, h_a, h_1 = s[row + 1, 4], s[row + 1, 5], s[row + 1, 6], s[row + 1, 7], s[row + 1, 8], s[row + 1, 9]
+    tau = c[K_TAU_INV]
+    il, vc, ir, q, vh, iav = s[S_IL, 0], s[S_VC, 0], s[S_IR, 0], s[S_Q, 0], s[S_VH, 0], 0.0
+    if not free:
+        ir = 0.0
+    lift = 0.0 if still else (1.0 if biased else c[K_L_INV])
+    l_l, l_c, l_r, l_h, l_a, l_1 = lift * l_l, lift * l_c, lift * l_r, lift * l_h, lift * l_a, lift * l_1
+    bias = c[K_IBE]
     for n in range(order):
-        first = 1.0 if n == 0 else 0.0
-        over = 1.0 / (n + 1.0)
-        il = s[S_IL, n]
-        vc = s[S_VC, n]
-        vh = s[S_VH, n]
-        iav = 0.0
+        over = INVERSE[n]
         if needs_iav:
             _available_current(c, s, n)
             iav = s[S_IAV, n]
-        known = vc + esr * il - feed * vh + first * esr * (c[K_IADJ] * c[K_R1G] - load_a)
-        vsw = 0.0
-        if mode == SATURATED:
-            vsw = first * (c[K_VIN] - c[K_VCE0]) - c[K_RCE] * il
-        elif mode == FREEWHEEL:
-            vsw = -first * c[K_VD0] - c[K_RD] * (il - iav)
-        known += feed * vsw
-        if free:
-            ir = s[S_IR, n]
-            vout = (known + esr * ir) * scale
-        else:
-            vout = (known + first * esr * held_a) * scale
-            ir = first * held_a + held_b * vout
-            s[S_IR, n] = ir
-        if mode == EMPTY:
-            vsw = vout
-        s[S_VOUT, n] = vout
-        s[S_VSW, n] = vsw
-        back = ((vsw - vh) * c[K_RH_INV] + first * c[K_IADJ]) * c[K_G_INV]
-        s[S_FEED, n] = back
-        rest = first * c[K_VREF] - c[K_SELF] * vout + back - c[K_RO] * ir
-        s[S_ER, n] = rest
-        if free:
-            s[S_IR, n + 1] = rest * c[K_LO_INV] * over
-        icap = il + ir - first * load_a - load_b * vout - (c[K_SELF] * vout - back) * c[K_R1_INV]
-        s[S_VC, n + 1] = icap * c[K_C_INV] * over
-        if coupled:
-            s[S_VH, n + 1] = (vsw - vh - vout * (1.0 - c[K_SELF]) - back) * c[K_RHCH_INV] * over
-        if base:
-            s[S_Q, n + 1] = (ir - first * c[K_IBE] - s[S_Q, n] * c[K_TAU_INV]) * over
+        drive = (l_l * il + l_c * vc) + (l_r * ir + l_h * vh) + (l_a * iav + l_1)
+        slope_c = (c_l * il + c_c * vc) + (c_r * ir + c_h * vh) + (c_a * iav + c_1)
+        slope_r = (r_l * il + r_c * vc) + (r_r * ir + r_h * vh) + (r_a * iav + r_1)
+        slope_h = (h_l * il + h_c * vc) + (h_r * ir + h_h * vh) + (h_a * iav + h_1)
         if mode == RECOVERING:
             s[S_SWEPT, n + 1] = (iav - il) * over
-        if mode == EMPTY or emptied:
-            continue
-        drive = vsw - vout - c[K_RL] * il
+        if free:
+            charging = ir - q * tau - bias
+            ir = slope_r * over
+            s[S_IR, n + 1] = ir
+        else:
+            s[S_IR, n] = slope_r
+            charging = slope_r - q * tau - bias
+        vc = slope_c * over
+        s[S_VC, n + 1] = vc
+        vh = slope_h * over
+        s[S_VH, n + 1] = vh
+        if base:
+            q = charging * over
+            s[S_Q, n + 1] = q
         if biased:
             s[S_DRIVE, n] = drive
             _inverse_inductance(c, s, n)
             total = 0.0
             for j in range(n + 1):
                 total += s[S_INVERSE, j] * s[S_DRIVE, n - j]
-            s[S_IL, n + 1] = total * over
+            il = total * over
         else:
-            s[S_IL, n + 1] = drive * c[K_L_INV] * over
+            il = drive * over
+        s[S_IL, n + 1] = il
+        l_1, c_1, r_1, h_1, bias = 0.0, 0.0, 0.0, 0.0, 0.0
+    _outputs(s, row, order, free, needs_iav)
+
+
+@compiled
+def _outputs(s: Array, row: int, order: int, free: bool, needs_iav: bool) -> None:
+    """Orders of output voltage, switch node and error from those of the states."""
+    o_l, o_c, o_r, o_h = s[row + 1, 10], s[row + 1, 11], s[row + 1, 12], s[row + 1, 13]
+    o_a, o_1 = s[row + 2, 0], s[row + 2, 1]
+    n_l, n_c, n_r, n_h, n_a, n_1 = s[row + 2, 2], s[row + 2, 3], s[row + 2, 4], s[row + 2, 5], s[row + 2, 6], s[row + 2, 7]
+    e_l, e_c, e_r, e_h, e_a, e_1 = s[row + 2, 8], s[row + 2, 9], s[row + 2, 10], s[row + 2, 11], s[row + 2, 12], s[row + 2, 13]
+    if not free:
+        # the relations of a held current hold it already
+        o_r, n_r, e_r = 0.0, 0.0, 0.0
+    for n in range(order):
+        il, vc, ir, vh = s[S_IL, n], s[S_VC, n], s[S_IR, n], s[S_VH, n]
+        s[S_VOUT, n] = o_l * il + o_c * vc + o_r * ir + o_h * vh
+        s[S_VSW, n] = n_l * il + n_c * vc + n_r * ir + n_h * vh
+        s[S_ER, n] = e_l * il + e_c * vc + e_r * ir + e_h * vh
+    if needs_iav:
+        for n in range(order):
+            s[S_VOUT, n] += o_a * s[S_IAV, n]
+            s[S_VSW, n] += n_a * s[S_IAV, n]
+            s[S_ER, n] += e_a * s[S_IAV, n]
+    s[S_VOUT, 0] += o_1
+    s[S_VSW, 0] += n_1
+    s[S_ER, 0] += e_1
 
 
 @compiled
@@ -335,7 +422,6 @@ def _active_orders(c: Array, m: Discrete, s: Array, order: int) -> None:
         s[S_VSW, n] = vsw
         s[S_IL, n + 1] = s[S_RATE, n] * over
         back = ((vsw - vh) * c[K_RH_INV] + first * c[K_IADJ]) * c[K_G_INV]
-        s[S_FEED, n] = back
         rest = first * c[K_VREF] - c[K_SELF] * vout + back - c[K_RO] * ir
         s[S_ER, n] = rest
         if free:
@@ -355,12 +441,9 @@ def expand(c: Array, x: Array, m: Discrete, s: Array, order: int) -> None:
     s[S_Q, 0] = x[X_Q]
     s[S_VH, 0] = x[X_VH]
     s[S_SWEPT, 0] = x[X_SWEPT]
-    for n in range(1, order + 1):
-        s[S_IL, n] = 0.0
-        s[S_IR, n] = 0.0
-        s[S_Q, n] = 0.0
-        s[S_VH, n] = 0.0
-        s[S_SWEPT, n] = 0.0
+    for row in (S_IL, S_IR, S_Q, S_VH, S_SWEPT):
+        for n in range(1, order + 1):
+            s[row, n] = 0.0
     if m[M_MODE] == ACTIVE:
         _active_orders(c, m, s, order)
     else:

@@ -1,0 +1,349 @@
+"""Part limits at operating points, each with its margin.
+
+Ratings are plain ones, without a safety factor of their own: the margin says how far they are. Predictions
+take typical values; where a data sheet guarantees less, the check takes the guaranteed value and says both.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from buckdesign.design.elements import ResolvedDesign
+from buckdesign.design.losses import Floats, input_ripple_rms
+from buckdesign.design.operated import Operated
+from buckdesign.design.operating_point import Check
+from buckdesign.design.ratings import RatingData, rating_data
+from buckdesign.design.sections import DEVICES
+from buckdesign.design.temperatures import (
+    RECTIFIER,
+    TRANSISTOR,
+    device_heat,
+    heat_data,
+    junctions,
+)
+from buckdesign.physics.bias import flux_density
+from buckdesign.physics.capacitor import electrolytic_life, ripple_rise
+from buckdesign.physics.diode import conduction_loss, parallel_share
+from buckdesign.physics.pnp import base_current
+from buckdesign.physics.regulator import current_limit
+from buckdesign.units import format_quantity
+
+LIFE_WANTED = 8760.0
+"""Life of an electrolytic below which a design is refused: a year of continuous running [h] (own choice)."""
+
+_ROUNDING = 1e-9
+
+
+@dataclass(frozen=True, kw_only=True)
+class Limit:
+    """One limit over all points.
+
+    Attributes
+    ----------
+    name, unit : str
+        What is limited; unit as in `buckdesign.units`.
+    value, limit : NDArray
+        Shape (n,); a value that is NaN where the limit applies does not hold.
+    applies : NDArray
+        Where the limit applies and is known, shape (n,).
+    is_upper : bool
+        Whether the value must stay below.
+    room : NDArray or None
+        Distance to the limit, positive where it holds; between value and limit where None.
+    span : NDArray or None
+        What the margin is relative to; the limit itself where None.
+    typical : NDArray or None
+        The value with typical parts, where `value` takes guaranteed ones.
+    note : str
+        What a reader has to know.
+    note_unknown : str
+        What NaN stands for.
+    """
+
+    name: str
+    unit: str
+    value: Floats
+    limit: Floats
+    applies: NDArray[np.bool_]
+    is_upper: bool = True
+    room: Floats | None = None
+    span: Floats | None = None
+    typical: Floats | None = None
+    note: str = ""
+    note_unknown: str = ""
+
+    @property
+    def margin(self) -> Floats:
+        """Relative distance to the limit, positive where it holds [1], shape (n,)."""
+        room = self.limit - self.value if self.is_upper else self.value - self.limit
+        if self.room is not None:
+            room = self.room
+        span = np.abs(self.limit if self.span is None else self.span)
+        return room / np.where(span > 0.0, span, 1.0)
+
+    @property
+    def holds(self) -> NDArray[np.bool_]:
+        """Whether it holds, also where it does not apply, shape (n,)."""
+        return ~self.applies | (self.margin >= -_ROUNDING)
+
+    def at(self, index: int, where: str) -> Check:
+        """The check of one point."""
+        value = _finite(self.value[index])
+        note = self.note_unknown if value is None else self.note
+        if self.typical is not None and value is not None:
+            typical = float(self.typical[index])
+            if np.isfinite(typical) and abs(typical - value) > 5e-3 * abs(value):
+                shown = format_quantity(typical, self.unit, ascii_only=True)
+                note = f"{note}; typical {shown}" if note else f"typical {shown}"
+        return Check(
+            name=self.name,
+            value=value,
+            limit=_finite(self.limit[index]),
+            margin=None if value is None else _finite(self.margin[index]),
+            holds=bool(self.holds[index]),
+            where=where,
+            note=note,
+            unit=self.unit,
+        )
+
+
+def _finite(value: Any) -> float | None:
+    return float(value) if np.isfinite(value) else None
+
+
+def part_limits(operated: Operated, resolved: ResolvedDesign | Sequence[ResolvedDesign]) -> list[Limit]:
+    """The limits of all parts at all points.
+
+    Parameters
+    ----------
+    operated : Operated
+        Operating points.
+    resolved : ResolvedDesign or sequence of ResolvedDesign
+        The design of each point; one stands for all.
+
+    Returns
+    -------
+    list of Limit
+        Always the same limits in the same order; `Limit.applies` says where one is known.
+    """
+    designs = [resolved] * len(operated) if isinstance(resolved, ResolvedDesign) else list(resolved)
+    rating = rating_data(designs)
+    return [
+        *_transistor_limits(operated, rating),
+        *_rectifier_limits(operated, rating),
+        *_regulator_limits(operated, rating),
+        *_capacitor_limits(operated, "output", rating.output),
+        *_capacitor_limits(operated, "input", rating.input),
+        *_junction_limits(operated, rating, designs),
+        *_choke_limits(operated, rating),
+    ]
+
+
+def _upper(name: str, unit: str, value: Floats, limit: Floats, note: str = "", **more: Any) -> Limit:
+    return Limit(
+        name=name, unit=unit, value=value, limit=limit, applies=np.isfinite(limit), note=note, **more
+    )
+
+
+def _transistor_limits(operated: Operated, rating: RatingData) -> list[Limit]:
+    loop = operated.loop
+    drop = operated.parameter("threshold") + operated.parameter("slope") * loop.column("rectifier_max_a")
+    voltage = operated.parameter("supply_voltage") + np.where(loop.column("rectifier_max_a") > 0.0, drop, 0.0)
+    return [
+        _upper("collector voltage", "V", voltage, rating.collector_voltage),
+        _upper("collector current", "A", loop.column("collector_max_a"), rating.collector_current),
+        _base_drive(operated, rating),
+    ]
+
+
+def _base_drive(operated: Operated, rating: RatingData) -> Limit:
+    """Drive at hand against the drive that the collector's peak needs with the guaranteed gain."""
+    loop, get = operated.loop, operated.parameter
+    peak = np.maximum(loop.column("collector_max_a"), operated.load)
+    emitter = rating.base_emitter_max
+    needed = emitter / get("base_resistance") + base_current(peak, rating.gain_min, get("gain_knee"))
+    across = get("supply_voltage") - emitter - get("dropout") - loop.column("output_voltage_v")
+    by_resistor = across / (get("drive_resistance") + get("dropout_resistance") + 1e-12)
+    limit = rating.current_limit_min
+    far = get("current_limit_far") * limit / get("current_limit")
+    difference = get("dropout") + get("dropout_resistance") * np.maximum(by_resistor, 0.0)
+    by_limit = current_limit(
+        difference, limit, get("current_limit_knee"), get("current_limit_far_voltage"), far
+    )
+    at_hand = np.maximum(np.minimum(by_resistor, by_limit), 0.0)
+    switching = np.array([regime != "linear" for regime in loop.regimes()])
+    return Limit(
+        name="base drive",
+        unit="A",
+        value=at_hand,
+        limit=needed,
+        applies=switching,
+        is_upper=False,
+        note="at hand; needed by the peak at the guaranteed gain",
+    )
+
+
+def _rectifier_limits(operated: Operated, rating: RatingData) -> list[Limit]:
+    loop = operated.loop
+    current = loop.column("rectifier_mean_a")
+    others = np.maximum(rating.pieces - 1.0, 1.0)
+    slope = np.maximum(rating.slope, 1e-6)
+    worst = parallel_share(current, 0.0, slope, rating.threshold_extra, slope / others)
+    share = np.where(rating.pieces > 1.0, worst, current)
+    parallel = bool((rating.pieces > 1.0).any())
+    return [
+        _upper("rectifier reverse voltage", "V", loop.column("reverse_max_v"), rating.reverse_voltage),
+        _upper(
+            "rectifier current",
+            "A",
+            share,
+            rating.average_current,
+            "mean, in the piece of lowest drop" if parallel else "mean",
+            typical=current / rating.pieces,
+        ),
+    ]
+
+
+def _regulator_limits(operated: Operated, rating: RatingData) -> list[Limit]:
+    loop = operated.loop
+    in_base = np.square(rating.base_emitter_max) / operated.parameter("base_resistance")
+    return [
+        _upper("regulator difference", "V", loop.column("regulator_difference_max_v"), rating.max_difference),
+        _upper(
+            "regulator current",
+            "A",
+            loop.column("regulator_max_a"),
+            rating.current_limit_min,
+            "against the guaranteed current limit",
+        ),
+        _upper("drive resistor power", "W", operated.balance.losses["drive_resistor"], rating.rdrive_power),
+        _upper("base-emitter resistor power", "W", in_base, rating.rbe_power, "transistor always driven"),
+    ]
+
+
+def _capacitor_limits(operated: Operated, side: str, rating: Floats) -> list[Limit]:
+    """Voltage, ripple current and life; ratings as (voltage, ripple current, life, its temperature)."""
+    loop = operated.loop
+    voltage, ripple_rated, life, life_c = rating.T
+    if side == "output":
+        peak, ripple = loop.column("output_max_v"), loop.column("output_capacitor_rms_a")
+    else:
+        peak, ripple = operated.parameter("supply_voltage"), input_ripple_rms(loop)
+    rated = np.where(np.isfinite(ripple_rated), ripple_rated, np.inf)
+    hot = operated.ambient_c + ripple_rise(ripple, rated)
+    expected = electrolytic_life(life, life_c, hot)
+    timed = np.isfinite(life) & np.isfinite(life_c)
+    return [
+        _upper(f"{side} capacitor voltage", "V", peak, voltage),
+        _upper(f"{side} capacitor ripple current", "A", ripple, ripple_rated, "rms"),
+        Limit(
+            name=f"{side} capacitor life",
+            unit="h",
+            value=np.asarray(expected, dtype=float),
+            limit=np.full(len(operated), LIFE_WANTED),
+            applies=timed & (not operated.electrical_only),
+            is_upper=False,
+            note="15 years claimed at most",
+        ),
+    ]
+
+
+def _junction_limits(
+    operated: Operated, rating: RatingData, designs: Sequence[ResolvedDesign]
+) -> list[Limit]:
+    """Junctions with drops at their limit values; typical temperatures beside them."""
+    loop = operated.loop
+    power = device_heat(operated.balance.losses)
+    extra_v, extra_r = rating.saturation_extra.T
+    mean, rms = loop.column("collector_mean_a"), loop.column("collector_rms_a")
+    conducting = operated.balance.losses["transistor_conduction"] > 0.0
+    more = conduction_loss(extra_v, extra_r, mean, rms)
+    power[:, TRANSISTOR] += np.where(conducting, more, 0.0)
+    power[:, RECTIFIER] += conduction_loss(
+        rating.threshold_extra,
+        rating.slope_extra / rating.pieces,
+        loop.column("rectifier_mean_a"),
+        loop.column("rectifier_rms_a"),
+    )
+    heat = heat_data(designs)
+    junction_c, _, _ = junctions(loop, power, operated.data, heat, operated.ambient_c)
+    known = np.isfinite(heat.own) & (not operated.electrical_only)
+    found = []
+    for index, name in enumerate(DEVICES):
+        limit = rating.junction_limit[:, index]
+        applies = np.isfinite(limit) & known[:, index]
+        found.append(
+            Limit(
+                name=f"{name} junction",
+                unit="degC",
+                value=junction_c[:, index],
+                limit=limit,
+                applies=applies,
+                span=limit - operated.ambient_c,
+                typical=operated.junction(name),
+                note_unknown="thermal runaway: no temperature balances the rectifier's leakage",
+            )
+        )
+    return found
+
+
+def _choke_limits(operated: Operated, rating: RatingData) -> list[Limit]:
+    turns, length, permeability, half, exponent, saturation = rating.flux.T
+    field = turns * operated.loop.column("choke_max_a") / length
+    density = np.asarray(flux_density(field, permeability, half, exponent), dtype=float)
+    wound = np.isfinite(operated.balance.choke_c)
+    return [
+        Limit(
+            name="core flux density",
+            unit="T",
+            value=density,
+            limit=saturation,
+            applies=np.isfinite(saturation) & np.isfinite(density),
+            note="at the peak current, against saturation",
+        ),
+        Limit(
+            name="choke temperature",
+            unit="degC",
+            value=operated.balance.choke_c,
+            limit=rating.choke_limit,
+            applies=np.isfinite(rating.choke_limit) & wound,
+            span=rating.choke_limit - operated.ambient_c,
+            note="the larger of two methods",
+        ),
+    ]
+
+
+def where_text(operated: Operated, index: int) -> str:
+    """An operating point in a few words, such as ``24 V, 2.5 A, 25 degC``."""
+    resistance = operated.parameter("load_resistance")[index]
+    load = format_quantity(float(operated.parameter("load_current")[index]), "A", ascii_only=True)
+    words = [format_quantity(float(operated.parameter("supply_voltage")[index]), "V", ascii_only=True)]
+    if not np.isfinite(resistance) or operated.parameter("load_current")[index] > 0.0:
+        words.append(load)
+    if np.isfinite(resistance):
+        words.append(format_quantity(float(resistance), "ohm", ascii_only=True))
+    words.append(format_quantity(float(operated.ambient_c[index]), "degC", ascii_only=True))
+    return ", ".join(words)
+
+
+def checks_at(limits: Sequence[Limit], operated: Operated, index: int) -> tuple[Check, ...]:
+    """The checks that apply at one point, in the order of the limits."""
+    where = where_text(operated, index)
+    return tuple(limit.at(index, where) for limit in limits if limit.applies[index])
+
+
+def worst_checks(limits: Sequence[Limit], operated: Operated) -> tuple[Check, ...]:
+    """Each limit at the point where its margin is smallest; limits that apply nowhere are left out."""
+    found = []
+    for limit in limits:
+        if not limit.applies.any():
+            continue
+        margin = np.where(limit.applies, np.where(np.isnan(limit.value), -np.inf, limit.margin), np.inf)
+        index = int(np.argmin(margin))
+        found.append(limit.at(index, where_text(operated, index)))
+    return tuple(found)

@@ -1,0 +1,115 @@
+"""From a requirement to a simulated, checked design: the main job."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from buckdesign.design.attempts import Attempt, Progress, attempt
+from buckdesign.design.describing import alternatives, component_values, gathered, gathered_warnings
+from buckdesign.design.design_result import Blocking, DesignResult
+from buckdesign.design.judging import Judged
+from buckdesign.design.operating import checked_points
+from buckdesign.design.requirement import Requirement
+from buckdesign.loop.parameters import COLUMN
+from buckdesign.loop.results import steady_states
+from buckdesign.parts import Tables, load_tables
+
+
+def design_supply(
+    requirement: Requirement,
+    tables: Tables | None = None,
+    *,
+    jobs: int | None = None,
+    progress: Progress | None = None,
+) -> DesignResult:
+    """Design a supply: choose every part, simulate the range, check every limit.
+
+    Parameters
+    ----------
+    requirement : Requirement
+        What is wanted, see `buckdesign.read_requirement`.
+    tables : Tables, optional
+        Parts to choose from; the tables of the package where omitted.
+    jobs : int, optional
+        Threads; all processors by default. The result does not depend on it.
+    progress : callable, optional
+        Told in a few words what is being done.
+
+    Returns
+    -------
+    DesignResult
+        The design with its simulated range, or what blocks it and what would have to give.
+    """
+    known = load_tables() if tables is None else tables
+    found = attempt(requirement, known, jobs=jobs, progress=progress)
+    if found.holds:
+        return result_of(requirement, found)
+    from buckdesign.design.feasibility import find_blocking
+
+    blocking = find_blocking(requirement, known, found, jobs=jobs, progress=progress)
+    return result_of(requirement, found, blocking)
+
+
+def result_of(requirement: Requirement, found: Attempt, blocking: tuple[Blocking, ...] = ()) -> DesignResult:
+    """The result of an attempt.
+
+    Parameters
+    ----------
+    requirement : Requirement
+        What was wanted.
+    found : Attempt
+        What came of it.
+    blocking : tuple of Blocking
+        What blocks it, where it does not hold.
+
+    Returns
+    -------
+    DesignResult
+        With the range of the best design, also where that one fails.
+    """
+    if not found.judged:
+        return DesignResult(requirement=requirement, feasible=False, blocking=blocking)
+    best, *others = found.judged
+    corners = tuple(checked_points(best.operated, best.resolved, requirement))
+    return DesignResult(
+        requirement=requirement,
+        feasible=best.holds,
+        design=best.resolved.design if best.holds else None,
+        resolved=best.resolved,
+        corners=corners,
+        checks=tuple(sorted(best.checks, key=_urgency)),
+        blocking=blocking,
+        alternatives=tuple(alternatives(requirement, best, others)),
+        frequency_spread_hz=frequency_spread(requirement, best),
+        values=component_values(best),
+        warnings=gathered_warnings(corners) + _notes(best),
+        cautions=gathered([point.cautions for point in corners]),
+        assumptions=gathered([point.assumptions for point in corners]),
+    )
+
+
+def frequency_spread(requirement: Requirement, best: Judged) -> tuple[float, float]:
+    """Frequency at nominal supply and full load with the regulator's lag at both ends of its band [Hz]."""
+    operated = best.operated
+    full = np.flatnonzero(operated.load >= requirement.output.current_max * (1.0 - 1e-6))
+    distance = np.abs(operated.parameter("supply_voltage")[full] - requirement.supply.voltage_nominal)
+    rows = np.repeat(operated.rows[full[int(np.argmin(distance))]][None, :], 2, axis=0)
+    factor = best.resolved.regulator.output_inductance_factor
+    rows[:, COLUMN["output_inductance"]] *= (factor, 1.0 / factor)
+    slow, fast = steady_states(rows, jobs=1).column("frequency_hz")
+    return float(min(slow, fast)), float(max(slow, fast))
+
+
+def _urgency(check: object) -> tuple[bool, float]:
+    margin = getattr(check, "margin", None)
+    return bool(getattr(check, "holds", True)), float("-inf") if margin is None else float(margin)
+
+
+def _notes(best: Judged) -> tuple[str, ...]:
+    """Warnings about the choice itself."""
+    chosen = best.finish.input_capacitor
+    if chosen is None:
+        return ("no capacitor in the tables is rated for the supply: choose the input capacitor by hand",)
+    if chosen.parallel > 1:
+        return (f"input capacitor: {chosen.parallel} pieces of {chosen.part.name} in parallel",)
+    return ()
