@@ -22,7 +22,7 @@ from buckdesign.cli.options import CONTEXT, QuickGroup
 PROGRAM = "buckdesign"
 
 COMMANDS: dict[str, str] = {
-    "design": "Design a supply from a requirement, simulate it over its range, check every limit.",
+    "design": "Design, simulate and check a supply from a requirement.",
     "simulate": "Simulate one operating point, or the start from rest.",
     "choke": "Wind a choke, choose one, recognise a ring, show its bias curve.",
     "parts": "List, show and check part and core tables.",

@@ -19,12 +19,12 @@ EASY_SPACE = {"strands": (1, 2), "stacks": (1,)}
 HARD_SPACE = {"strands": (1, 2, 3, 4), "stacks": (1, 2)}
 """What is wound first, and what where that does not do."""
 
-VOLUME_COSTS = (1.2, 0.4)
+VOLUME_COSTS = (0.9, 0.3)
 """Cost of each doubling of a choke's volume, against half a unit of loss [1] (own choice)."""
 
-CORE_C = (95.0, 105.0)
+CORE_C = (80.0, 105.0)
 """Hottest core that is chosen, and what is allowed where the air is so hot that there is no other way
-[degC]: the powder's binder ages, and 110 degC is the limit that is checked."""
+[degC]: the powder's binder ages from 85 degC up, and 110 degC is the limit that is checked."""
 
 LEAST_RISE = 20.0
 """Rise that a choke should be allowed [K] (own choice)."""

@@ -92,6 +92,12 @@ class TransistorElement:
         Typical [V], [ohm].
     saturation_voltage_limit, saturation_resistance_limit : float
         Through the limit value [V], [ohm].
+    saturation_forced_gain : float or None
+        Collector over base current at which the saturation voltage holds [1]; None: given as it is.
+    leakage, leakage_at_c : float
+        Collector leakage [A] at a junction temperature [degC].
+    breakdown_voltage, breakdown_current : float or None
+        A point of the second-breakdown limit [V], [A].
     collector_voltage, collector_current : float or None
         Ratings [V], [A].
     junction_case, junction_limit_c : float or None
@@ -109,6 +115,11 @@ class TransistorElement:
     saturation_resistance: float
     saturation_voltage_limit: float
     saturation_resistance_limit: float
+    saturation_forced_gain: float | None
+    leakage: float
+    leakage_at_c: float
+    breakdown_voltage: float | None
+    breakdown_current: float | None
     collector_voltage: float | None
     collector_current: float | None
     junction_case: float | None
@@ -133,6 +144,8 @@ class RectifierElement:
         Change of the forward drop with temperature [V/K].
     recovery_charge : float
         [C].
+    recovery_current : float or None
+        Forward current it was measured at [A]; None: the charge holds as it is given.
     recovery_time : float or None
         [s].
     leakage, leakage_at_c : float
@@ -156,6 +169,7 @@ class RectifierElement:
     slope_limit: float
     forward_coefficient: float
     recovery_charge: float
+    recovery_current: float | None
     recovery_time: float | None
     leakage: float
     leakage_at_c: float
@@ -233,8 +247,12 @@ class CapacitorElement:
     ----------
     name : str or None
         Part.
+    kind : str or None
+        As in the table; None: capacitance and ESR hold as they are given.
     capacitance, esr : float
         [F], [ohm].
+    loss_tangent : float or None
+        At 120 Hz [1].
     rated_voltage, ripple_current : float or None
         [V], rms [A].
     life, life_temperature_c : float or None
@@ -244,8 +262,10 @@ class CapacitorElement:
     """
 
     name: str | None
+    kind: str | None
     capacitance: float
     esr: float
+    loss_tangent: float | None
     rated_voltage: float | None
     ripple_current: float | None
     life: float | None

@@ -27,7 +27,7 @@ from buckdesign.errors import InfeasibleError
 from buckdesign.loop.results import Effort, SteadyStates
 from buckdesign.parts import Tables
 
-USUAL_VOLUME = 0.25e-6
+USUAL_VOLUME = 0.35e-6
 """Volume of a wound ring over output power [m3/W] (common practice)."""
 
 THIN_MARGIN = 0.06
@@ -238,10 +238,10 @@ def _is_narrow(check: Check) -> bool:
 
 
 def _size(requirement: Requirement, operated: Operated, judged_rh: float) -> float:
-    """Cost of the choke's volume, 0.7 for each doubling beyond what is usual, and of very large resistors."""
+    """Cost of the choke's volume, 0.6 for each doubling beyond what is usual, and of very large resistors."""
     volume = max(float(operated.data.choke_volume[0]), SMALL_VOLUME)
     usual = USUAL_VOLUME * (requirement.output.voltage * requirement.output.current_max + SMALL_POWER)
-    return 0.7 * float(np.maximum(np.log2(volume / usual), -2.0)) + float(high_resistance_cost(judged_rh))
+    return 0.6 * float(np.maximum(np.log2(volume / usual), -1.0)) + float(high_resistance_cost(judged_rh))
 
 
 __all__ = ["Judged", "ambients_of", "judge", "part_of", "range_points", "violation"]

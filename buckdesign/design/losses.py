@@ -15,11 +15,13 @@ from numpy.typing import NDArray
 
 from buckdesign.constants import COPPER_REFERENCE_C, COPPER_TEMPERATURE_COEFFICIENT
 from buckdesign.design.elements import ResolvedDesign, WindingElement
+from buckdesign.loop.parameters import COLUMN
 from buckdesign.loop.results import SteadyStates
 from buckdesign.physics.choke import flux_swing
 from buckdesign.physics.core_loss import three_term_loss_triangular
 from buckdesign.physics.diode import capacitance_loss, leakage, leakage_loss
 from buckdesign.physics.ring import surface
+from buckdesign.physics.safe_area import leakage as collector_leakage
 from buckdesign.physics.winding import bore_porosity, wind, wound_dimensions
 from buckdesign.physics.wire import skin_depth, winding_factor
 
@@ -44,6 +46,10 @@ _LOOP_LOSSES: Mapping[str, str] = {
     "divider": "divider_w",
 }
 """Losses that the loop model accounts for itself, and its columns."""
+
+LEAKAGE_CEILING_C = 200.0
+"""Junction temperature up to which leakage is followed [degC] (own choice, above every junction limit): one
+that is hotter without it has failed already, which is not called runaway."""
 
 DUTY_LIMITS = (0.02, 0.98)
 """Duty of the choke's flux beyond which its eddy loss is not extrapolated [1] (own choice)."""
@@ -89,6 +95,8 @@ class LossData:
 
     Attributes
     ----------
+    transistor_leakage, transistor_leakage_at_c : NDArray
+        Collector leakage [A] at a junction temperature [degC].
     capacitance : NDArray
         Junction capacitance of all rectifiers together [F].
     leakage, leakage_at_c, leakage_coefficient : NDArray
@@ -105,6 +113,8 @@ class LossData:
         Surface [m2], outer diameter [m] and envelope [m3] of the wound ring; NaN for a bought choke.
     """
 
+    transistor_leakage: Floats
+    transistor_leakage_at_c: Floats
     capacitance: Floats
     leakage: Floats
     leakage_at_c: Floats
@@ -121,6 +131,10 @@ class LossData:
     diameter: Floats
     choke_volume: Floats
 
+    def part(self, which: NDArray[np.intp]) -> LossData:
+        """Some of the points."""
+        return LossData(**{one.name: getattr(self, one.name)[which] for one in fields(self)})
+
 
 def loss_data(resolved: Sequence[ResolvedDesign]) -> LossData:
     """`LossData` of the design of each point."""
@@ -130,6 +144,8 @@ def loss_data(resolved: Sequence[ResolvedDesign]) -> LossData:
 def _loss_record(resolved: ResolvedDesign) -> dict[str, Any]:
     rectifier, source = resolved.rectifier, resolved.input_capacitor
     return {
+        "transistor_leakage": resolved.transistor.leakage,
+        "transistor_leakage_at_c": resolved.transistor.leakage_at_c,
         "capacitance": rectifier.capacitance * rectifier.parallel,
         "leakage": rectifier.leakage * rectifier.parallel,
         "leakage_at_c": rectifier.leakage_at_c,
@@ -321,9 +337,43 @@ def input_ripple_rms(loop: SteadyStates) -> Floats:
     return np.sqrt(np.maximum(square, 0.0))
 
 
-def input_capacitor_loss(loop: SteadyStates, data: LossData) -> Floats:
-    """Loss in the ESR of the input capacitor [W], shape (n,); 0 without one."""
-    return np.where(np.isnan(data.input_esr), 0.0, data.input_esr) * np.square(input_ripple_rms(loop))
+def input_capacitor_loss(loop: SteadyStates, esr: Floats) -> Floats:
+    """Loss in the ESR of the input capacitor [W], shape (n,); 0 where the ESR is NaN, without one."""
+    return np.where(np.isnan(esr), 0.0, esr) * np.square(input_ripple_rms(loop))
+
+
+def transistor_leakage_loss(
+    loop: SteadyStates, rows: Floats, data: LossData, junction_c: Floats, ambient_c: Floats
+) -> Floats:
+    """Loss by the transistor's leakage while it is off.
+
+    Parameters
+    ----------
+    loop : SteadyStates
+        Steady states of n points.
+    rows : NDArray
+        Loop parameters, shape (n, columns).
+    data : LossData
+        Of the same points.
+    junction_c, ambient_c : NDArray
+        Junction, ambient where it is not known [degC], shape (n,).
+
+    Returns
+    -------
+    NDArray
+        [W], shape (n,).
+
+    Notes
+    -----
+    Derived: the voltage across it averages to ``V_in - V_out - R_L I`` over all times, nearly all of it while it is
+    off.
+    """
+    across = rows[:, COLUMN["supply_voltage"]] - loop.column("output_voltage_v")
+    across = np.maximum(across - rows[:, COLUMN["choke_resistance"]] * loop.column("choke_mean_a"), 0.0)
+    hot = np.minimum(np.where(np.isnan(junction_c), ambient_c, junction_c), LEAKAGE_CEILING_C)
+    idle = ~np.isin(loop.column("regime"), [1.0, 2.0, 3.0])
+    current = collector_leakage(data.transistor_leakage, hot, data.transistor_leakage_at_c)
+    return np.where(idle, across * current, 0.0)
 
 
 def loop_losses(loop: SteadyStates) -> dict[str, Floats]:

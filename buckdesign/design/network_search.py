@@ -47,6 +47,9 @@ COUPLED_RESISTORS = (8.2e3, 18e3, 39e3, 82e3)
 COUPLED_CAPACITORS = (100e-12, 220e-12, 470e-12, 1000e-12)
 """Feedback capacitors [F] (E6)."""
 
+SMALL_DRIVE_RESISTANCE = 4.7
+"""Drive resistor below which it hardly limits a short circuit; each halving costs 0.5 [ohm] (own choice)."""
+
 COUPLED_HANDICAP = 3.0
 """Score by which the best candidate with a capacitor may lag after the coarse grid [1]."""
 
@@ -183,14 +186,15 @@ def _coarse(requirement: Requirement, bench: Bench) -> Trials:
     usual = usual_inductance(requirement)
     inductances = [usual / share for share in RIPPLE_SHARES]
     capacitors = spread(len(drawer.capacitors), 8)
-    shared = {"rectifier": [0], "rbe": [base_resistors(load)[1]]}
+    rbe = [base_resistors(load)[1]]
     targets = [(target, 0.0) for target in START_TARGETS]
     direct = grid(
         transistor=range(len(drawer.transistors)),
         capacitor=capacitors,
         inductance=inductances,
         network=targets,
-        **shared,
+        rectifier=[0],
+        rbe=rbe,
     )
     feedback = np.minimum(bench.feedback_for_start(direct, direct.rh), LARGEST_FEEDBACK)
     direct = direct.with_values(rh=feedback)
@@ -200,7 +204,8 @@ def _coarse(requirement: Requirement, bench: Bench) -> Trials:
         capacitor=spread(len(drawer.capacitors), 4),
         inductance=inductances[1::2],
         network=pairs,
-        **shared,
+        rectifier=[0],
+        rbe=rbe,
     )
     return joined([direct, coupled])
 
@@ -310,18 +315,23 @@ class _Run:
 
 
 def size_cost(requirement: Requirement, bench: Bench, trials: Trials) -> Floats:
-    """Cost of large chokes and capacitors: 0.8 for each doubling of the choke's energy, 0.4 of
-    capacitance."""
+    """Cost of what is large or special.
+
+    0.8 for each doubling of the choke's energy and 0.4 of capacitance beyond the usual, 0.5 for each halving of a
+    small drive resistor, 0.7 for an output capacitor that is no ordinary one of low impedance.
+    """
     output = requirement.output
     energy = 0.5 * trials.inductance * output.current_max**2
     usual = CHOKE_ENERGY * (output.voltage * output.current_max + SMALL_POWER)
     parts = bench.drawer.capacitors
     capacitance = np.array([one.capacitance for one in parts])[trials.capacitor]
     special = np.array([one.kind != "low-impedance electrolytic" for one in parts])[trials.capacitor]
-    cost = 0.8 * np.maximum(np.log2(energy / usual), -1.0)
-    cost = cost + 0.4 * np.maximum(np.log2(capacitance / 470e-6), 0.0) + 0.4 * special
+    cost = 0.8 * np.maximum(np.log2(energy / usual), -0.5)
+    cost = cost + 0.4 * np.maximum(np.log2(capacitance / 470e-6), 0.0) + 0.7 * special
     size = np.array([one.size for one in bench.drawer.transistors])[trials.transistor]
     size = size + np.array([one.size for one in bench.drawer.rectifiers])[trials.rectifier]
+    drive = np.maximum(bench.drive_resistors(trials), 0.1)
+    cost = cost + 0.5 * np.maximum(np.log2(SMALL_DRIVE_RESISTANCE / drive), 0.0)
     return cost + size + high_resistance_cost(trials.rh)
 
 

@@ -21,18 +21,20 @@ from buckdesign.design.losses import (
 from buckdesign.design.operating_point import OperatingPoint
 from buckdesign.design.resolve import loop_parameters
 from buckdesign.design.sections import DEVICES
-from buckdesign.design.temperatures import SETTLED, Balance, Settled, heat_data, settle_temperatures
+from buckdesign.design.temperatures import SETTLED, Balance, Settled, settle_temperatures, ways_of
 from buckdesign.errors import InputError
 from buckdesign.loop.constants import STATES
 from buckdesign.loop.parameters import COLUMN, LoopParameters
 from buckdesign.loop.results import OUTPUTS, STUDY, Effort, Start, SteadyStates, steady_states
 
-
 NEAR_CYCLES = 2
 """Cycles iterated plainly from a state near the steady one [1] (own choice)."""
 
-BRIEF_CYCLES = 6
-"""Further cycles before an oscillation that was irregular just before is called so again [1] (own choice)."""
+FIRST_WINDOW = 16
+"""Cycles to average irregular oscillation over before any temperature is known [1] (own choice)."""
+
+REGULAR_SPREAD = 1e-3
+"""Spread of periods below which irregular oscillation may have become regular [1] (own choice)."""
 
 SETTLED_SINGLE = 0.05
 """Change below which the temperatures of a single point stand still [K] (own choice)."""
@@ -311,18 +313,24 @@ def operate_rows(
     ambient = np.broadcast_to(np.asarray(own, dtype=float), (len(rows),)).copy()
     data = loss_data(designs)
 
+    is_single = effort.more > STUDY.more
+
     def run(
-        some: Floats, starts: Floats | None = None, irregular: NDArray[np.bool_] | None = None
+        some: Floats, starts: Floats | None, is_irregular: NDArray[np.bool_]
     ) -> SteadyStates:
-        if starts is None or irregular is None:
-            return steady_states(some, start=start, effort=effort, jobs=jobs)
-        return _run_again(some, starts, irregular, effort, jobs)
+        if starts is None:
+            window = effort.window if electrical_only else min(effort.window, FIRST_WINDOW)
+            return steady_states(some, start=start, effort=replace(effort, window=window), jobs=jobs)
+        near = replace(effort, plain=min(effort.plain, NEAR_CYCLES))
+        if is_single or not is_irregular.any():
+            return steady_states(some, starts=starts, effort=near, jobs=jobs)
+        return _run_again(some, starts, is_irregular, near, jobs)
 
     if electrical_only:
-        settled = _without_heat(rows, run(rows))
+        settled = _without_heat(rows, run(rows, None, np.zeros(len(rows), dtype=bool)))
     else:
         settled = settle_temperatures(
-            rows, run, data, heat_data(designs), ambient, _precision(effort)
+            rows, run, data, ways_of(designs), ambient, SETTLED_SINGLE if is_single else SETTLED
         )
     return Operated(
         rows=settled.rows,
@@ -336,24 +344,21 @@ def operate_rows(
     )
 
 
-def _precision(effort: Effort) -> float:
-    """Finer for a single point than in a study [K]."""
-    return SETTLED if effort.more <= STUDY.more else SETTLED_SINGLE
-
-
 def _run_again(
-    rows: Floats, starts: Floats, irregular: NDArray[np.bool_], effort: Effort, jobs: int | None
+    rows: Floats, starts: Floats, is_irregular: NDArray[np.bool_], near: Effort, jobs: int | None
 ) -> SteadyStates:
-    """Steady states from near their end: what repeats is closed at once, what is irregular is not tried long."""
-    near = replace(effort, plain=min(effort.plain, NEAR_CYCLES))
-    short = replace(near, more=min(effort.more, BRIEF_CYCLES), patience=min(effort.patience, BRIEF_CYCLES))
-    if not irregular.any():
-        return steady_states(rows, starts=starts, effort=near, jobs=jobs)
+    """Steady states near those before; what was irregular is only averaged, unless it looks regular."""
     values, ends = np.empty((len(rows), len(OUTPUTS))), np.empty((len(rows), STATES))
-    for which, how in ((~irregular, near), (irregular, short)):
+
+    def put(which: NDArray[np.bool_], effort: Effort) -> None:
         if which.any():
-            found = steady_states(rows[which], starts=starts[which], effort=how, jobs=jobs)
+            found = steady_states(rows[which], starts=starts[which], effort=effort, jobs=jobs)
             values[which], ends[which] = found.values, found.ends
+
+    put(~is_irregular, near)
+    put(is_irregular, replace(near, accelerated=0, more=0, patience=0))
+    spread = SteadyStates(values=values, ends=ends).column("cycle_spread")
+    put(is_irregular & (spread < REGULAR_SPREAD), near)
     return SteadyStates(values=values, ends=ends)
 
 

@@ -124,6 +124,7 @@ def relaxed(requirement: Requirement, line: Line, value: float) -> Requirement:
     """
     supply, output, limits = requirement.supply, requirement.output, requirement.limits
     low, nominal, high = supply.voltage
+    slow, fast = limits.frequency or (0.0, math.inf)
     match line.name:
         case "ripple":
             output = replace(output, ripple=value)
@@ -134,9 +135,9 @@ def relaxed(requirement: Requirement, line: Line, value: float) -> Requirement:
         case "load":
             output = replace(output, current=(min(output.current_min, value), value))
         case "frequency_low":
-            limits = replace(limits, frequency=(value, limits.frequency_high))
+            limits = replace(limits, frequency=(value, fast))
         case "frequency_high":
-            limits = replace(limits, frequency=(limits.frequency_low, value))
+            limits = replace(limits, frequency=(slow, value))
         case "efficiency":
             limits = replace(limits, efficiency=value)
         case "ambient":

@@ -215,8 +215,10 @@ def _capacitor(section: CapacitorSection, tables: Tables) -> CapacitorElement:
         volume = math.pi / 4 * part.diameter**2 * part.length
     return CapacitorElement(
         name=None if part is None else part.name,
+        kind=None if part is None or section.esr is not None else part.kind,
         capacitance=picked(section, part, "capacitance", math.nan),
         esr=picked(section, part, "esr", math.nan),
+        loss_tangent=table_value_or_none(part, "loss_tangent"),
         rated_voltage=first_known(section.rated_voltage, table_value_or_none(part, "rated_voltage")),
         ripple_current=first_known(section.ripple_current, table_value_or_none(part, "ripple_current")),
         life=first_known(section.life, table_value_or_none(part, "life")),

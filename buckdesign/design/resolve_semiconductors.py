@@ -23,6 +23,7 @@ from buckdesign.physics.pnp import (
     knee_from_rating,
     saturation_resistance,
 )
+from buckdesign.physics.recovery import TEST_SLOPE, charge_at_crossing
 from buckdesign.physics.switching import charge_time_from_storage
 
 BASE_EMITTER_VOLTAGE = 0.75
@@ -30,6 +31,13 @@ BASE_EMITTER_VOLTAGE = 0.75
 
 SATURATION_THRESHOLD = 0.2
 """Saturation voltage of a power transistor extrapolated to no current [V] (common practice, no source)."""
+
+POWER_LEAKAGE, POWER_LEAKAGE_C = 5e-3, 150.0
+"""Collector leakage of a power transistor where its sheet is not at hand [A] at a junction temperature [degC] (from
+memory: limits of registered TO-3 types are 5-10 mA; its loss is of the order of a milliwatt)."""
+
+STANDARD_LIFETIME = 1e-6
+"""Lifetime of the carriers in a rectifier without recovery data [s] (from memory: standard rectifiers, about 1 us)."""
 
 ONE_POINT_THRESHOLD_SHARE = 0.75
 """Threshold over forward drop at rated current where a sheet gives one point (common practice, no source: the
@@ -83,6 +91,11 @@ def resolve_transistor(
         saturation_resistance_limit=first_known(resistance, slope)
         if part is None
         else max(slope, first_known(resistance, 0.0)),
+        saturation_forced_gain=_forced_gain(section, part),
+        leakage=0.0 if part is None else table_value(part, "leakage_hot", POWER_LEAKAGE),
+        leakage_at_c=table_value(part, "leakage_hot_c", POWER_LEAKAGE_C),
+        breakdown_voltage=table_value_or_none(part, "breakdown_voltage"),
+        breakdown_current=table_value_or_none(part, "breakdown_current"),
         collector_voltage=first_known(
             section.collector_voltage, table_value_or_none(part, "collector_voltage")
         ),
@@ -115,6 +128,12 @@ def _saturation(part: Transistor) -> tuple[float, float]:
     limit = part.saturation_voltage_max
     threshold = min(SATURATION_THRESHOLD, limit / 2)
     return threshold, float(saturation_resistance(limit, part.saturation_current, threshold))
+
+
+def _forced_gain(section: TransistorSection, part: Transistor | None) -> float | None:
+    if part is None or section.saturation_voltage is not None or part.saturation_base_current is None:
+        return None
+    return part.saturation_current / part.saturation_base_current
 
 
 def _charge_time(
@@ -164,6 +183,7 @@ def resolve_rectifier(section: RectifierSection, tables: Tables, assumptions: li
         first_known(section.slope, typical * limit[1]),
     )
     leakage, leakage_at = _leakage(section, part)
+    charge, charge_current = _recovery(section, part, assumptions)
     return RectifierElement(
         name=None if part is None else part.name,
         kind=None if part is None else part.kind,
@@ -173,7 +193,8 @@ def resolve_rectifier(section: RectifierSection, tables: Tables, assumptions: li
         threshold_limit=max(threshold, limit[0]),
         slope_limit=max(slope, limit[1]),
         forward_coefficient=_forward_coefficient(part),
-        recovery_charge=picked(section, part, "recovery_charge", 0.0),
+        recovery_charge=charge,
+        recovery_current=charge_current,
         recovery_time=table_value_or_none(part, "recovery_time"),
         leakage=leakage,
         leakage_at_c=leakage_at,
@@ -219,6 +240,22 @@ def _leakage_coefficient(part: Rectifier | None) -> float:
     if part.leakage_coefficient is not None:
         return part.leakage_coefficient
     return LEAKAGE_COEFFICIENT.get(part.kind, FALLBACK_LEAKAGE_COEFFICIENT)
+
+
+def _recovery(
+    section: RectifierSection, part: Rectifier | None, assumptions: list[str]
+) -> tuple[float, float | None]:
+    """Recovery charge and the current it was measured at; a part without either is taken as a standard rectifier."""
+    if section.recovery_charge is not None:
+        return section.recovery_charge, None
+    if part is None:
+        return 0.0, None
+    charge, current = part.recovery_charge, part.recovery_current
+    if charge is None and part.kind != "Schottky":
+        current = part.average_current if current is None else current
+        charge = float(charge_at_crossing(current, TEST_SLOPE, STANDARD_LIFETIME))
+        assumptions.append(f"{part.name}: no recovery data, taken as a standard rectifier, {charge * 1e9:.0f} nC")
+    return (charge, current) if charge else (0.0, None)
 
 
 def _forward_coefficient(part: Rectifier | None) -> float:

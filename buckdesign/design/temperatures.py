@@ -6,16 +6,27 @@ feeds back quickly, the rectifier's leakage and the resistance of the copper, is
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, fields
-from typing import Any
+from typing import Any, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
 
 from buckdesign.constants import COPPER_REFERENCE_C
-from buckdesign.design.elements import HeatPath, ResolvedDesign
+from buckdesign.design.elements import HeatPath, HeatPaths, RectifierElement, ResolvedDesign
+from buckdesign.design.hot_parameters import (
+    COPPER_CEILING_C,
+    PARAMETER_RANGE_C,
+    RECTIFIER,
+    REGULATOR,
+    TRANSISTOR,
+    HotData,
+    hot_data,
+    parameters_at,
+)
 from buckdesign.design.losses import (
+    LEAKAGE_CEILING_C,
     Floats,
     LossData,
     copper_ac_loss,
@@ -23,38 +34,20 @@ from buckdesign.design.losses import (
     core_loss,
     data_by_point,
     input_capacitor_loss,
+    input_ripple_rms,
     junction_capacitance_loss,
     leakage_factor,
     loop_losses,
     rectifier_leakage_loss,
+    transistor_leakage_loss,
     winding_ac_factor,
 )
 from buckdesign.design.sections import DEVICES
 from buckdesign.loop.parameters import COLUMN
 from buckdesign.loop.results import SteadyStates
 from buckdesign.physics.convection import ring_rise
-from buckdesign.physics.pnp import base_emitter_voltage, charge_time_at_temperature, gain_at_temperature
-from buckdesign.physics.regulator import DROPOUT_TEMPERATURE_COEFFICIENT
 from buckdesign.physics.runaway import junction_with_leakage
 from buckdesign.physics.thermal import ring_rise_surface_rule
-
-REFERENCE_C = 25.0
-"""Junction temperature of the tables' values [degC] (data sheets' usual condition)."""
-
-SATURATION_COEFFICIENT = 3e-3
-"""Change of the saturation resistance of a silicon power transistor [1/K] (from memory: the resistance of the
-collector rises as carriers get slower)."""
-
-PARAMETER_RANGE_C = (-55.0, 175.0)
-"""Temperatures within which parameters are changed [degC]; beyond, those of the end are taken (from memory:
-where the laws of temperature are known)."""
-
-COPPER_CEILING_C = 300.0
-"""Temperature up to which the copper's resistance is followed [degC] (own choice: the enamel has burnt)."""
-
-LEAKAGE_CEILING_C = 200.0
-"""Junction temperature up to which leakage is followed [degC] (own choice, above every junction limit): one
-that is hotter without it has failed already, which is not called runaway."""
 
 MIXING = (-9.0, 0.95)
 """Bounds of the part of the last step that is taken back [1] (own choice: a slope between -20 and 0.9)."""
@@ -63,8 +56,8 @@ RUNS = 8
 """Most runs of the loop to settle the temperatures [1] (own choice; two to three are usual)."""
 
 SETTLED = 0.5
-"""Change between two runs below which temperatures stand still [K] (own choice: what is left changes the rate of
-the loop by 0.3 % at most, and the temperatures by about a tenth of it)."""
+"""Change between two runs below which temperatures stand still [K] (own choice: what is left changes the rate
+of the loop by 0.3 % at most, and the temperatures by about a tenth of it)."""
 
 SETTLED_IRREGULAR = 2.0
 """The same for irregular oscillation, whose averages differ from run to run [K] (own choice)."""
@@ -72,8 +65,11 @@ SETTLED_IRREGULAR = 2.0
 IDLE_SHARE = 20.0
 """How much further the regulator may move, on which the loop hardly depends [1] (own choice)."""
 
+ESR_FELT, LOSS_FELT, DROP_FELT = 4e-3, 4e-3, 2e-3
+"""What counts like a kelvin: change of the ESR [1], of the recovery loss over all losses [1], of the saturation
+voltage [V] (own choice)."""
+
 _COPPER_STEPS = 12
-TRANSISTOR, REGULATOR, RECTIFIER = (DEVICES.index(name) for name in ("transistor", "regulator", "rectifier"))
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -89,14 +85,14 @@ class HeatData:
         Whether it sits on the shared heat sink, shape (n, 3).
     sink : NDArray
         The shared heat sink [K/W], shape (n,).
-    forward_coefficient : NDArray
-        Change of the rectifier's forward drop [V/K], shape (n,).
+    piece : NDArray
+        Part of the way that one piece of the rectifier has for itself [K/W], shape (n,); NaN where not known.
     """
 
     own: Floats
     is_shared: NDArray[np.bool_]
     sink: Floats
-    forward_coefficient: Floats
+    piece: Floats
 
     def part(self, which: NDArray[np.intp]) -> HeatData:
         """Some of the points."""
@@ -121,7 +117,7 @@ def _heat_record(resolved: ResolvedDesign) -> dict[str, Any]:
         "own": own,
         "is_shared": shared,
         "sink": heat.shared_heatsink or 0.0,
-        "forward_coefficient": resolved.rectifier.forward_coefficient,
+        "piece": _piece_resistance(heat, resolved.rectifier),
     }
 
 
@@ -134,6 +130,38 @@ def _own_resistance(path: HeatPath, element: Any, on_shared: bool) -> float:
         return float(path.heatsink + (case + path.pad) / pieces)
     free = getattr(element, "junction_ambient", None)
     return np.nan if free is None else float(free / pieces)
+
+
+def ways_of(resolved: Sequence[ResolvedDesign]) -> Ways:
+    """`Ways` of the design of each point."""
+    return Ways(heat=heat_data(resolved), hot=hot_data(resolved))
+
+
+def _piece_resistance(heat: HeatPaths, rectifier: RectifierElement) -> float:
+    path, case = heat.rectifier, rectifier.junction_case
+    if path.heatsink is not None or (path.is_shared and heat.shared_heatsink is not None):
+        return np.nan if case is None else float(case + path.pad)
+    return np.nan if rectifier.junction_ambient is None else float(rectifier.junction_ambient)
+
+
+@dataclass(frozen=True, kw_only=True)
+class Ways:
+    """Ways of the heat, and what follows it.
+
+    Attributes
+    ----------
+    heat : HeatData
+        Thermal resistances.
+    hot : HotData
+        What the loop's parameters follow.
+    """
+
+    heat: HeatData
+    hot: HotData
+
+    def part(self, which: NDArray[np.intp]) -> Ways:
+        """Some of the points."""
+        return Ways(heat=self.heat.part(which), hot=self.hot.part(which))
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -158,45 +186,8 @@ class Balance:
     runaway: NDArray[np.bool_]
 
 
-def parameters_at(rows: Floats, heat: HeatData, junction_c: Floats, choke_c: Floats) -> Floats:
-    """Loop parameters at temperatures.
-
-    Parameters
-    ----------
-    rows : NDArray
-        Parameters at 25 degC, copper at 20 degC, shape (n, columns).
-    heat : HeatData
-        Of the same points.
-    junction_c, choke_c : NDArray
-        Temperatures [degC], shape (n, 3) and (n,); NaN leaves a parameter as it is.
-
-    Returns
-    -------
-    NDArray
-        New rows: base-emitter voltage, gain, charge lifetime and saturation resistance of the transistor,
-        threshold and recovery charge of the rectifier, dropout of the regulator, resistance of the choke.
-    """
-    low, high = PARAMETER_RANGE_C
-    hot = np.clip(np.where(np.isnan(junction_c), REFERENCE_C, junction_c), low, high)
-    transistor, rectifier = hot[:, TRANSISTOR], hot[:, RECTIFIER]
-    choke = np.where(np.isnan(choke_c), 1.0, copper_resistance_factor(np.minimum(choke_c, COPPER_CEILING_C)))
-    changed = rows.copy()
-    emitter, gain, time = COLUMN["base_emitter"], COLUMN["gain"], COLUMN["charge_time"]
-    saturation, threshold = COLUMN["saturation_resistance"], COLUMN["threshold"]
-    changed[:, emitter] = np.maximum(base_emitter_voltage(rows[:, emitter], transistor), 0.1)
-    changed[:, gain] = gain_at_temperature(rows[:, gain], transistor)
-    changed[:, time] = charge_time_at_temperature(rows[:, time], transistor)
-    changed[:, saturation] *= 1.0 + SATURATION_COEFFICIENT * (transistor - REFERENCE_C)
-    drop = heat.forward_coefficient * (rectifier - REFERENCE_C)
-    changed[:, threshold] = np.maximum(rows[:, threshold] + drop, 0.2 * rows[:, threshold])
-    changed[:, COLUMN["choke_resistance"]] *= choke
-    dropout = DROPOUT_TEMPERATURE_COEFFICIENT * (hot[:, REGULATOR] - REFERENCE_C)
-    changed[:, COLUMN["dropout"]] = np.maximum(rows[:, COLUMN["dropout"]] + dropout, 0.0)
-    return changed
-
-
 def balance(
-    loop: SteadyStates, rows: Floats, data: LossData, heat: HeatData, ambient_c: Floats, choke_c: Floats
+    loop: SteadyStates, rows: Floats, data: LossData, ways: Ways, ambient_c: Floats, choke_c: Floats
 ) -> Balance:
     """Losses and temperatures for given averages of the loop.
 
@@ -206,7 +197,7 @@ def balance(
         Steady states of n points.
     rows : NDArray
         Parameters at 25 degC, shape (n, columns): the copper's resistance at 20 degC is taken from them.
-    data, heat : LossData, HeatData
+    data, ways : LossData, Ways
         Of the same points.
     ambient_c, choke_c : NDArray
         Ambient, and the choke's temperature in the loop's run [degC], shape (n,).
@@ -218,7 +209,7 @@ def balance(
     """
     losses = loop_losses(loop)
     losses["choke_core"] = core_loss(loop, data)
-    losses["input_capacitor"] = input_capacitor_loss(loop, data)
+    losses["input_capacitor"] = input_capacitor_loss(loop, _input_esr(loop, data, ways.hot, ambient_c))
     losses["rectifier_recovery"] += junction_capacitance_loss(loop, data)
     copper = rows[:, COLUMN["choke_resistance"]]
     factor = winding_ac_factor(loop, data, np.where(np.isnan(choke_c), ambient_c, choke_c))
@@ -226,9 +217,14 @@ def balance(
     followed = np.where(np.isnan(hot_choke), COPPER_REFERENCE_C, np.minimum(hot_choke, COPPER_CEILING_C))
     resistance = copper * copper_resistance_factor(followed)
     losses["choke_copper_ac"] = copper_ac_loss(loop, resistance, factor)
-    junction_c, leakage, runaway = junctions(loop, device_heat(losses), data, heat, ambient_c)
+    junction_c, leakage, runaway = junctions(loop, device_heat(losses), data, ways.heat, ambient_c)
     losses["rectifier_leakage"] = leakage
+    losses["transistor_leakage"] = transistor_leakage_loss(loop, rows, data, junction_c[:, TRANSISTOR], ambient_c)
     return Balance(losses=losses, junction_c=junction_c, choke_c=hot_choke, runaway=runaway)
+
+
+def _input_esr(loop: SteadyStates, data: LossData, hot: HotData, ambient_c: Floats) -> Floats:
+    return hot.input.esr(data.input_esr, loop.column("frequency_hz"), input_ripple_rms(loop), ambient_c)
 
 
 def _choke_temperature(
@@ -324,9 +320,15 @@ def junctions(
     return np.where(lost, np.nan, junction), leakage, runaway
 
 
-Run = Callable[[Floats, "Floats | None", "NDArray[np.bool_] | None"], SteadyStates]
-"""Steady states of some rows; from given starting states near their end or the usual ones; and, with those, which
-of them are known to be irregular."""
+class Run(Protocol):
+    """Runs the loop for some rows."""
+
+    def __call__(
+        self, some: Floats, starts: Floats | None, is_irregular: NDArray[np.bool_]
+    ) -> SteadyStates:
+        """Steady states of the rows, from given states near their end or the usual ones; which of them were
+        irregular in the run before.
+        """
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -352,7 +354,7 @@ class Settled:
 
 
 def settle_temperatures(
-    rows: Floats, run: Run, data: LossData, heat: HeatData, ambient_c: Floats, precision: float = SETTLED
+    rows: Floats, run: Run, data: LossData, ways: Ways, ambient_c: Floats, precision: float = SETTLED
 ) -> Settled:
     """Run the loop until its losses and the temperatures agree.
 
@@ -362,7 +364,7 @@ def settle_temperatures(
         Parameters at 25 degC, shape (n, columns).
     run : callable
         Runs the loop for some of the rows.
-    data, heat : LossData, HeatData
+    data, ways : LossData, Ways
         Of the same points.
     ambient_c : NDArray
         [degC], shape (n,).
@@ -372,41 +374,63 @@ def settle_temperatures(
     Returns
     -------
     Settled
-        With at most `RUNS` runs; only points whose parameters still move are run again, each from where its last
-        run ended. Where the loop repeats without change the temperatures follow from its last run alone.
+        With at most `RUNS` runs; only points whose parameters still move are run again, each from where its
+        last run ended.
     """
     ambient = np.repeat(ambient_c[:, None], len(DEVICES) + 1, axis=1)
-    known = np.column_stack([np.isfinite(heat.own), np.isfinite(data.surface)])
+    known = np.column_stack([np.isfinite(ways.heat.own), np.isfinite(data.surface)])
     steps = _Steps(np.where(known, ambient, np.nan))
-    now = parameters_at(rows, heat, steps.at[:, :-1], steps.at[:, -1])
-    loop = run(now, None, None)
-    values, ends = loop.values.copy(), loop.ends.copy()
-    for count in range(RUNS):
-        loop = SteadyStates(values=values, ends=ends)
-        found = balance(loop, rows, data, heat, ambient_c, steps.at[:, -1])
-        wanted = np.column_stack([found.junction_c, found.choke_c])
-        irregular = loop.column("period_cycles") < 0.0
+    now = parameters_at(rows, ways.hot, steps.at[:, :-1], steps.at[:, -1], ambient_c)
+    loop = run(now, None, np.zeros(len(rows), dtype=bool))
+    moving = np.ones(len(rows), dtype=bool)
+    which = np.arange(len(rows))
+    for turn in range(1, RUNS + 1):
+        part = SteadyStates(values=loop.values[which], ends=loop.ends[which])
+        some = ways.part(which)
+        found = balance(part, rows[which], data.part(which), some, ambient_c[which], steps.at[which, -1])
+        change = np.column_stack([found.junction_c, found.choke_c]) - steps.at[which]
+        change = np.where(np.isfinite(change), change, 0.0)
+        irregular = part.column("period_cycles") < 0.0
         enough = np.where(irregular, np.maximum(SETTLED_IRREGULAR, precision), precision)
-        moving = _felt_change(steps.at, wanted) > enough
-        if not moving.any() or count == RUNS - 1:
+        there = steps.at[which]
+        then = parameters_at(rows[which], some.hot, there[:, :-1], there[:, -1], ambient_c[which], part)
+        moves = np.maximum(_felt(there, change), _felt_by_rows(now[which], then, part, found)) > enough
+        moving[which] = moves
+        if turn == RUNS or not moves.any():
             break
-        again = np.flatnonzero(moving)
-        change = np.where(np.isfinite(wanted), wanted - steps.at, 0.0)
-        steps.take(again, change[again])
-        now[again] = parameters_at(rows[again], heat.part(again), steps.at[again, :-1], steps.at[again, -1])
-        part = run(now[again], ends[again, :5], irregular[again])
-        values[again], ends[again] = part.values, part.ends
-    return Settled(loop=loop, rows=now, balance=found, is_settled=~moving)
+        steps.take(which[moves], change[moves])
+        which, irregular, some = which[moves], irregular[moves], some.part(np.flatnonzero(moves))
+        part = SteadyStates(values=part.values[moves], ends=part.ends[moves])
+        there = steps.at[which]
+        now[which] = parameters_at(rows[which], some.hot, there[:, :-1], there[:, -1], ambient_c[which], part)
+        again = run(now[which], loop.ends[which, :5], irregular)
+        loop.values[which], loop.ends[which] = again.values, again.ends
+    last = balance(loop, rows, data, ways, ambient_c, steps.at[:, -1])
+    return Settled(loop=loop, rows=now, balance=last, is_settled=~moving)
 
 
-def _felt_change(before: Floats, after: Floats) -> Floats:
-    """Largest change of temperature that the loop's parameters follow [K], shape (n,)."""
+def _felt(at: Floats, change: Floats) -> Floats:
+    """Largest part of a change of temperature that the loop's parameters follow [K], shape (n,)."""
     low, high = PARAMETER_RANGE_C
     tops = np.full(len(DEVICES) + 1, high)
     tops[-1] = COPPER_CEILING_C
-    change = np.abs(np.clip(after, low, tops) - np.clip(before, low, tops))
-    change[:, REGULATOR] /= IDLE_SHARE
-    return np.where(np.isfinite(change), change, 0.0).max(axis=1)
+    felt = np.abs(np.clip(at + change, low, tops) - np.clip(at, low, tops))
+    felt[:, REGULATOR] /= IDLE_SHARE
+    return np.where(np.isfinite(felt), felt, 0.0).max(axis=1)
+
+
+def _felt_by_rows(now: Floats, then: Floats, loop: SteadyStates, found: Balance) -> Floats:
+    """Change of what follows the loop rather than a temperature, as a change of temperature [K], shape (n,)."""
+    esr, charge, drop = COLUMN["esr"], COLUMN["recovery_charge"], COLUMN["saturation_voltage"]
+    total = np.maximum(sum(found.losses.values(), np.zeros(len(now))), 1e-3)
+    swept = np.abs(then[:, charge] - now[:, charge]) * now[:, COLUMN["supply_voltage"]]
+    return np.maximum.reduce(
+        [
+            np.abs(then[:, esr] / np.maximum(now[:, esr], 1e-9) - 1.0) / ESR_FELT,
+            swept * loop.column("frequency_hz") / total / LOSS_FELT,
+            np.abs(then[:, drop] - now[:, drop]) / DROP_FELT,
+        ]
+    )
 
 
 class _Steps:

@@ -94,9 +94,10 @@ class Trials:
         """Some of them, by index or mask."""
         return Trials(**{one.name: getattr(self, one.name)[at] for one in fields(self)})
 
-    def with_values(self, **values: Floats) -> Trials:
+    def with_values(self, **values: Floats | Indices) -> Trials:
         """The same with some values replaced."""
-        return replace(self, **values)
+        kept = {one.name: getattr(self, one.name) for one in fields(self)}
+        return Trials(**(kept | values))
 
 
 def joined(parts: Sequence[Trials]) -> Trials:

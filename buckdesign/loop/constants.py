@@ -17,7 +17,8 @@ Array = NDArray[np.float64]
 Discrete = NDArray[np.int64]
 
 ORDER = 16
-TOLERANCE = 1e-10
+# error of one step, relative to the load current, and in volts
+TOLERANCE = 1e-12
 INVERSE = 1.0 / np.arange(1.0, ORDER + 2.0)
 
 # switch modes
@@ -48,9 +49,9 @@ ROWS = S_LINEAR + 3 * STATES_KEPT
     K_VIN, K_VREF, K_IADJ, K_SELF, K_R1G, K_RH_INV, K_G_INV, K_R1_INV, K_LO_INV, K_RO, K_IQ, K_ILIM, K_IBE,
     K_VBE, K_TAU, K_TAU_INV, K_BETA, K_IK_INV, K_VCE0, K_RCE, K_VD0, K_RD, K_QRR, K_L_INV, K_I0_INV, K_EXP,
     K_RL, K_C_INV, K_ESR, K_ILOAD, K_GLOAD, K_RHCH_INV, K_ON_A, K_ON_B, K_OFF_A, K_OFF_B, K_FOLD_A, K_FOLD_B,
-    K_IFAR, K_FOLDS, K_SC_I, K_SC_IR, K_SC_Q, K_VSET, K_FULL, K_RDRIVE, K_RBE,
-) = range(47)  # fmt: skip
-CONSTANTS = 47
+    K_IFAR, K_FOLDS, K_SC_I, K_SC_IR, K_SC_Q, K_VSET, K_FULL, K_RDRIVE, K_RBE, K_TOLERANCE,
+) = range(48)  # fmt: skip
+CONSTANTS = 48
 
 # columns of a parameter row
 P_VIN = COLUMN["supply_voltage"]
@@ -166,3 +167,4 @@ def derive(row: Array, c: Array) -> None:
     c[K_FULL] = row[P_FULL]
     c[K_RDRIVE] = row[P_RDRIVE]
     c[K_RBE] = row[P_RBE]
+    c[K_TOLERANCE] = TOLERANCE

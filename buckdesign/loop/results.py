@@ -56,6 +56,8 @@ class Effort:
         Most integration steps between two cycles [1].
     span : float
         Longest time between two cycles [s].
+    tolerance : float
+        Error of one step, relative to the load current, and in volts [1].
     """
 
     plain: int = 6
@@ -65,16 +67,21 @@ class Effort:
     window: int = 64
     steps: int = 20000
     span: float = 20.0
+    tolerance: float = 1e-10
 
     def array(self) -> Floats:
-        """The settings in the order that the kernel reads them, shape (7,)."""
+        """The settings in the order that the kernel reads them, shape (8,)."""
         return np.array(
-            [self.plain, self.accelerated, self.more, self.window, self.steps, self.span, self.patience], np.float64
+            [
+                self.plain, self.accelerated, self.more, self.window, self.steps, self.span, self.patience,
+                self.tolerance,
+            ],
+            np.float64,
         )
 
 
 STUDY = Effort()
-DETAILED = Effort(more=620, patience=4000, window=500, steps=100000)
+DETAILED = Effort(more=620, patience=4000, window=500, steps=100000, tolerance=1e-12)
 
 
 @dataclass(frozen=True, kw_only=True)

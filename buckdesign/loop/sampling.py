@@ -100,7 +100,7 @@ def record(
             stalled += 1
             if stalled > 12:
                 nudge(c, x, m, s)
-        if event != NONE and change(c, x, m, s, event, which, h):
+        if event != NONE and change(c, x, m, s, event, which, h) and clock > 0.0:
             begun += 1
     return filled, clock, begun
 
@@ -131,7 +131,7 @@ def cycle_starts(
             stalled += 1
             if stalled > 12:
                 nudge(c, x, m, s)
-        if event != NONE and change(c, x, m, s, event, which, h):
+        if event != NONE and change(c, x, m, s, event, which, h) and clock > 0.0:
             times[begun] = clock
             states[begun] = x
             if begun > 0:

@@ -63,6 +63,7 @@ from .constants import (
     DISCRETES,
     K_FULL,
     K_IQ,
+    K_TOLERANCE,
     K_VSET,
     ORDER,
     P_CH,
@@ -80,7 +81,7 @@ from .constants import (
 )  # fmt: skip
 from .cycles import BEGAN, PROGRESS, run_cycle
 from .margin import start_margin
-from .orbit import AT_REST, IRREGULAR, O_SPAN, O_STEPS, O_WINDOW, PERIODIC, UNSETTLED, average, settle
+from .orbit import AT_REST, IRREGULAR, O_SPAN, O_STEPS, O_TOLERANCE, O_WINDOW, PERIODIC, UNSETTLED, average, settle
 from .step import classify
 
 LINEAR, STUCK, DROPOUT, OVERLOAD, CONTINUOUS, DISCONTINUOUS = range(6)
@@ -203,6 +204,7 @@ def solve_one(row: Array, start: Array, given: bool, settings: Array, out: Array
     own_a = np.zeros(ACCOUNTS)
     c, x, m, s, a = lent(own_c), lent(own_x), lent(own_m), lent(own_s), lent(own_a)
     derive(row, c)
+    c[K_TOLERANCE] = settings[O_TOLERANCE]
     g = np.zeros(PROGRESS)
     limits = np.empty(2)
     limits[0] = settings[O_STEPS]

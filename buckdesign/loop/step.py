@@ -40,6 +40,7 @@ from .constants import (
     K_SC_Q,
     K_TAU,
     K_TAU_INV,
+    K_TOLERANCE,
     K_VCE0,
     K_VD0,
     K_VIN,
@@ -65,7 +66,6 @@ from .constants import (
     S_VOUT,
     S_VSW,
     SATURATED,
-    TOLERANCE,
     UNHELD,
     X_IL,
     X_IR,
@@ -282,9 +282,9 @@ def _length(c: Array, m: Discrete, s: Array, order: int, limit: float) -> float:
         before, last = last, size
     h = limit
     if last > 0.0:
-        h = min(h, math.exp(math.log(TOLERANCE / last) / order))
+        h = min(h, math.exp(math.log(c[K_TOLERANCE] / last) / order))
     if before > 0.0:
-        h = min(h, math.exp(math.log(TOLERANCE / before) / (order - 1)))
+        h = min(h, math.exp(math.log(c[K_TOLERANCE] / before) / (order - 1)))
     if c[K_I0_INV] > 0.0 and m[M_MODE] != EMPTY and s[S_IL, 0] * c[K_I0_INV] <= SMALL_BIAS:
         while value(s, S_IL, order, h) * c[K_I0_INV] > 10.0 * SMALL_BIAS:
             h *= 0.6
@@ -518,7 +518,7 @@ def _saturated_events(c: Array, m: Discrete, s: Array, order: int, h: float) -> 
     """Events of the saturated transistor and the decaying part of its charge."""
     decay = 0.0
     size = abs(s[S_Q, order]) / c[K_SC_Q]
-    if size > 0.0 and h > math.exp(math.log(TOLERANCE / size) / order):
+    if size > 0.0 and h > math.exp(math.log(c[K_TOLERANCE] / size) / order):
         decay = _charge_by_exponential(c, s, order)
     event = NONE
     ratio = c[K_TAU] / c[K_BETA]

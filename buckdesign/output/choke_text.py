@@ -78,10 +78,13 @@ def identification_text(found: Identification) -> str:
     str
         Several blocks.
     """
-    high = "no limit" if found.permeability_high is None else f"{found.permeability_high:.3g}"
+    high = "no limit" if found.permeability_high is None else _plain(found.permeability_high)
     pairs = [
         ("kind", found.kind + (" (refused for a choke)" if found.refused else "")),
-        ("permeability", f"{found.permeability:.3g}, between {found.permeability_low:.3g} and {high}"),
+        (
+            "permeability",
+            f"{_plain(found.permeability)}, between {_plain(found.permeability_low)} and {high}",
+        ),
         ("ring", found.ring or "in no table"),
         ("inductance factor", format_quantity(found.al_h, "H")),
         ("effective length, area", _effective(found)),
@@ -112,7 +115,7 @@ def bias_text(curve: BiasCurve) -> str:
         ("band", curve.band),
     ]
     if curve.fit is not None:
-        pairs.append(("permeability", f"{curve.fit.permeability:.3g} fitted"))
+        pairs.append(("permeability", f"{_plain(curve.fit.permeability)} fitted"))
         pairs.append(("residual", f"{curve.fit.rms_residual * 100:.1f} % of the reading (rms)"))
     headings = ("current", "inductance", "low", "high", "left", "field")
     columns = [Column(heading=name, right=True) for name in headings]
@@ -222,6 +225,11 @@ def _effective(found: Identification) -> str:
     return f"{format_quantity(length, 'm')}, {format_quantity(area, 'm2')}"
 
 
+def _plain(value: float) -> str:
+    """Three digits, never with a power of ten."""
+    return f"{float(f'{value:.3g}'):g}"
+
+
 def _stacked(stack: int) -> str:
     return f"{stack} x " if stack > 1 else ""
 
@@ -229,8 +237,12 @@ def _stacked(stack: int) -> str:
 def _remarks(warnings: Iterable[str], notes: Iterable[str]) -> list[str]:
     """Warnings with an exclamation mark, notes with a dash, each wrapped."""
     marked = [("! ", text) for text in warnings] + [("- ", text) for text in notes]
-    lines = [
-        textwrap.fill(text.replace(" degC", " \u00b0C"), _WIDTH, initial_indent=mark, subsequent_indent="  ")
-        for mark, text in marked
-    ]
-    return ["\n".join(lines)] if lines else []
+    return ["\n".join(_wrapped(mark, text) for mark, text in marked)] if marked else []
+
+
+def _wrapped(mark: str, text: str) -> str:
+    """A remark over several lines, broken between words only and never before a percent sign or a degree."""
+    glue = "\u00a0"
+    kept = text.replace(" degC", f"{glue}\u00b0C").replace(" %", f"{glue}%")
+    lines = textwrap.fill(kept, _WIDTH, initial_indent=mark, subsequent_indent="  ", break_on_hyphens=False)
+    return lines.replace(glue, " ")

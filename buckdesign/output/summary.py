@@ -108,12 +108,14 @@ def _asked(result: DesignResult) -> str:
     """The requirement in one line."""
     need = result.requirement
     supply, output = need.supply, need.output
-    text = f"{_volts(supply.voltage_low)}-{_volts(supply.voltage_high)} V to {_volts(output.voltage)} V, "
+    low, high = supply.voltage_low, supply.voltage_high
+    source = f"{_volts(low)}-{_volts(high)} V" if low < high else f"{_volts(high)} V"
+    text = f"{source} to {_volts(output.voltage)} V, "
     text += f"{_shown(output.current_min, 'A')} to {_shown(output.current_max, 'A')}"
     if output.ripple < 1e3:
         text += f", ripple below {_shown(output.ripple, 'V')}"
     low, high = need.limits.ambient
-    return text + f", ambient {low:g} to {high:g} °C"
+    return text + (f", ambient {low:g} to {high:g} °C" if low < high else f", ambient {high:g} °C")
 
 
 def _volts(value: float) -> str:

@@ -100,6 +100,10 @@ class Transistor:
         Largest switching times [s].
     switching_current, switching_base_current : float
         Collector current and equal on and off base currents at which they hold [A].
+    leakage_hot, leakage_hot_c : float
+        Largest collector leakage [A] at a junction temperature [degC].
+    breakdown_voltage, breakdown_current : float
+        A point of the second-breakdown limit for direct current [V], [A].
     junction_case : float
         Thermal resistance [K/W].
     junction_limit_c : float
@@ -130,6 +134,10 @@ class Transistor:
     fall_time: float | None = quantity("s")
     switching_current: float | None = quantity("A")
     switching_base_current: float | None = quantity("A")
+    leakage_hot: float | None = quantity("A")
+    leakage_hot_c: float | None = quantity("degC")
+    breakdown_voltage: float | None = quantity("V")
+    breakdown_current: float | None = quantity("A")
     junction_case: float = quantity("K/W", required=True)
     junction_limit_c: float = quantity("degC", required=True)
     package: str = text()

@@ -29,6 +29,12 @@ ESR_TEMPERATURE_FACTOR: Mapping[float, tuple[float, float]] = {
 }
 """ESR of an electrolytic at a temperature [degC] over that at 20 degC, low and high [1] (from memory)."""
 
+LOSS_FACTOR_FREQUENCY = 120.0
+"""Frequency of the loss factor in the tables [Hz] (catalogues)."""
+
+ESR_FREQUENCY = 100e3
+"""Frequency of the ESR in the tables [Hz] (catalogues)."""
+
 RATED_RIPPLE_RISE = 5.0
 """Rise of the core at rated ripple current [K]; makers allow 5-10 K (from memory)."""
 
@@ -92,6 +98,40 @@ def esr_factor_at_temperature(temperature_c: Real) -> tuple[Real, Real]:
     bands = np.log(np.array(list(ESR_TEMPERATURE_FACTOR.values())))
     low, high = (np.exp(np.interp(temperature_c, points, bands[:, side])) for side in (0, 1))
     return plain(low), plain(high)
+
+
+def esr_at_frequency(esr: Real, loss_factor: Real, capacitance: Real, frequency: Real) -> Real:
+    """ESR between the loss factor at 120 Hz and the ESR at 100 kHz.
+
+    Parameters
+    ----------
+    esr : float or ndarray
+        ESR at 100 kHz [ohm].
+    loss_factor : float or ndarray
+        ``tan(delta)`` at 120 Hz [1]; NaN where not known: the ESR is taken as it is.
+    capacitance : float or ndarray
+        Capacitance [F].
+    frequency : float or ndarray
+        Frequency, above zero [Hz].
+
+    Returns
+    -------
+    float or ndarray
+        ESR [ohm].
+
+    Notes
+    -----
+    Derived: a resistance (electrolyte, foils) and the loss of the oxide ``d/(2 pi f C)`` through both points.
+
+    Examples
+    --------
+    >>> round(float(esr_at_frequency(0.06, 0.14, 470e-6, 120.0)), 4), round(float(esr_at_frequency(0.06, 0.14, 470e-6, 20e3)), 4)
+    (0.3951, 0.0616)
+    """
+    low = esr_from_loss_factor(loss_factor, capacitance, LOSS_FACTOR_FREQUENCY)
+    oxide = np.maximum(low - esr, 0.0) / (1.0 / LOSS_FACTOR_FREQUENCY - 1.0 / ESR_FREQUENCY)
+    oxide = np.where(np.isfinite(oxide), oxide, 0.0)
+    return plain(esr + oxide * (1.0 / np.asarray(frequency) - 1.0 / ESR_FREQUENCY))
 
 
 def ripple_loss(ripple_rms: Real, esr: Real) -> Real:

@@ -35,6 +35,9 @@ FORWARD_TEMPERATURE_COEFFICIENT: Mapping[str, tuple[float, float]] = {
 """Change of the forward drop at small and at rated current [V/K] (from memory)."""
 
 
+_SHARING_STEPS = 30
+
+
 def threshold_and_slope(drop_1: Real, current_1: Real, drop_2: Real, current_2: Real) -> tuple[Real, Real]:
     """Straight forward characteristic through two points, ``V_F = V_T0 + r_d I``.
 
@@ -260,6 +263,61 @@ def parallel_share(current: Real, threshold_1: Real, slope_1: Real, threshold_2:
     """
     share = (current * slope_2 + threshold_2 - threshold_1) / (slope_1 + slope_2)
     return plain(np.minimum(np.maximum(share, 0.0), current))
+
+
+def hottest_piece(
+    current: Real, pieces: Real, threshold: Real, slope: Real, spread: Real, coefficient: Real, path: Real
+) -> tuple[Real, Real]:
+    """Current and extra rise of the piece of lowest drop among rectifiers in parallel.
+
+    Parameters
+    ----------
+    current : float or ndarray
+        Mean current of all together [A].
+    pieces : float or ndarray
+        Pieces in parallel, 1 or more [1].
+    threshold, slope : float or ndarray
+        Forward characteristic of the others [V], [ohm].
+    spread : float or ndarray
+        How far the threshold of the piece lies below theirs at equal temperature [V].
+    coefficient : float or ndarray
+        Change of the forward drop with temperature [V/K].
+    path : float or ndarray
+        Thermal resistance of one piece that the others do not share: junction to sink on a common sink, junction
+        to ambient where each is cooled by itself [K/W].
+
+    Returns
+    -------
+    tuple of float or ndarray
+        Current of the piece [A], and how much warmer it is than the others [K]. With a negative coefficient the
+        hotter piece draws more; where nothing stops that it carries all of the current.
+
+    Notes
+    -----
+    Derived: `parallel_share` with the difference of temperatures in balance, by a fixed number of steps.
+
+    Examples
+    --------
+    >>> amperes, warmer = hottest_piece(3.0, 2.0, 0.35, 0.06, 0.05, -1e-3, 0.0)
+    >>> round(float(amperes), 5), round(float(warmer), 3)
+    (1.91667, 0.0)
+    >>> amperes, warmer = hottest_piece(3.0, 2.0, 0.35, 0.06, 0.05, -1e-3, 40.0)
+    >>> round(float(amperes), 3), round(float(warmer), 1)
+    (2.071, 18.5)
+    """
+    others = np.maximum(np.asarray(pieces) - 1.0, 1.0)
+    own_slope = np.maximum(slope, 1e-6)
+    warmer: Real = np.zeros(np.broadcast(current, pieces, threshold, slope, spread, path).shape)
+    share: Real = current
+    for _ in range(_SHARING_STEPS):
+        low = threshold - spread + coefficient * warmer
+        share = parallel_share(current, low, own_slope, threshold, own_slope / others)
+        rest = (current - share) / others
+        heat = low * share + own_slope * share * share
+        heat_rest = threshold * rest + own_slope * rest * rest
+        warmer = path * np.maximum(heat - heat_rest, 0.0)
+    alone = np.asarray(pieces) <= 1.0
+    return plain(np.where(alone, current, share)), plain(np.where(alone, 0.0, warmer))
 
 
 def capacitance_loss(capacitance: Real, reverse_voltage: Real, frequency: Real) -> Real:

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from buckdesign.constants import ZERO_CELSIUS
+from buckdesign.constants import BOLTZMANN_EV, ZERO_CELSIUS
 from buckdesign.physics.arrays import Ranges, Real, plain
 
 RANGES: Ranges = {
@@ -34,6 +34,13 @@ TYPICAL_GAIN_RATIO = 1.6
 KNEE_SHARE = 2.5
 """Rated collector current over knee current where only one gain point is known (common practice, no
 source)."""
+
+REVERSE_GAIN = 4.0
+"""Inverse current gain of a power transistor [1]; 2-10 in use (from memory)."""
+
+LARGEST_FORCED_SHARE = 0.98
+"""Forced over available gain up to which the saturation voltage is followed [1] (own choice: it grows without bound
+at 1, where the transistor leaves saturation)."""
 
 CHARGE_TIME_DEFAULT = 1.5e-6
 """Charge lifetime of a slow power PNP where nothing is known [s] (common practice, no source)."""
@@ -388,3 +395,39 @@ def charge_time_at_temperature(charge_time_25c: Real, temperature_c: Real) -> Re
     2.0
     """
     return charge_time_25c * 2.0 ** ((temperature_c - 25.0) / CHARGE_TIME_DOUBLING)
+
+
+def saturation_with_drive(
+    forced_gain: Real, gain: Real, temperature_c: Real, reverse_gain: Real = REVERSE_GAIN
+) -> Real:
+    """Saturation voltage of the junctions as it depends on the base drive, without the collector's resistance.
+
+    Parameters
+    ----------
+    forced_gain : float or ndarray
+        Collector over base current [1].
+    gain : float or ndarray
+        Gain at that collector current [1].
+    temperature_c : float or ndarray
+        Junction temperature [degC].
+    reverse_gain : float or ndarray
+        Inverse gain [1].
+
+    Returns
+    -------
+    float or ndarray
+        Voltage [V]; forced gains above `LARGEST_FORCED_SHARE` of the gain count as that.
+
+    References
+    ----------
+    J. J. Ebers and J. L. Moll, Proc. IRE 42 (1954) 1761 (from memory):
+    ``V_T ln((1 + (b + 1)/b_R) / (1 - b/h))`` with the forced gain ``b``.
+
+    Examples
+    --------
+    >>> round(float(saturation_with_drive(10.0, 40.0, 26.85)), 4)
+    0.0416
+    """
+    share = np.minimum(forced_gain / gain, LARGEST_FORCED_SHARE)
+    thermal = BOLTZMANN_EV * (temperature_c + ZERO_CELSIUS)
+    return thermal * np.log((1.0 + (share * gain + 1.0) / reverse_gain) / (1.0 - share))

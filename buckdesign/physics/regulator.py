@@ -15,6 +15,10 @@ RANGES: Ranges = {
 """Dropout: where the curve of the 1.5 A class was read; impedance: where it rises 20 dB a decade (from
 memory)."""
 
+THERMAL_SHUTDOWN_C = 165.0
+"""Junction temperature at which the regulator's own protection takes its output current away [degC]; 150-175 by
+class and maker (from memory)."""
+
 DROPOUT_TEMPERATURE_COEFFICIENT = -2e-3
 """Change of the dropout voltage with temperature [V/K] (from memory)."""
 
