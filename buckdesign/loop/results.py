@@ -62,7 +62,7 @@ class Effort:
 
     plain: int = 6
     accelerated: int = 20
-    more: int = 64
+    more: int = 48
     patience: int = 600
     window: int = 64
     steps: int = 20000

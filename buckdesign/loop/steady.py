@@ -81,7 +81,18 @@ from .constants import (
 )  # fmt: skip
 from .cycles import BEGAN, PROGRESS, run_cycle
 from .margin import start_margin
-from .orbit import AT_REST, IRREGULAR, O_SPAN, O_STEPS, O_TOLERANCE, O_WINDOW, PERIODIC, UNSETTLED, average, settle
+from .orbit import (
+    AT_REST,
+    IRREGULAR,
+    O_SPAN,
+    O_STEPS,
+    O_TOLERANCE,
+    O_WINDOW,
+    PERIODIC,
+    UNSETTLED,
+    average,
+    settle,
+)
 from .step import classify
 
 LINEAR, STUCK, DROPOUT, OVERLOAD, CONTINUOUS, DISCONTINUOUS = range(6)

@@ -59,7 +59,6 @@ from .constants import (
     S_IR,
     S_KEYS,
     S_Q,
-    S_SQUARE,
     S_SWEPT,
     S_VC,
     S_VH,
@@ -76,7 +75,7 @@ from .constants import (
     Array,
     Discrete,
 )  # fmt: skip
-from .taylor import SMALL_BIAS, bound_line, expand, square
+from .taylor import SMALL_BIAS, bound_line, expand
 
 TINY = 1e-13
 AFTER_EVENT = 1e4
@@ -527,12 +526,15 @@ def _saturated_events(c: Array, m: Discrete, s: Array, order: int, h: float) -> 
     if least > ratio * most * (1.0 + c[K_IK_INV] * most):
         t = _choke_event(c, m, s, order, h)
         return (t, CHOKE_EMPTY, decay) if t <= h else (h, NONE, decay)
+    bent = 2.0 * c[K_IK_INV]
     for n in range(order + 1):
-        needed = s[S_IL, n]
-        if c[K_IK_INV] > 0.0:
-            square(s, n)
-            needed += c[K_IK_INV] * s[S_SQUARE, n]
-        s[S_EVENT, n] = s[S_Q, n] - ratio * needed
+        total = 0.0
+        if bent > 0.0:
+            for j in range((n + 1) // 2):
+                total += s[S_IL, j] * s[S_IL, n - j]
+            if n % 2 == 0:
+                total += 0.5 * s[S_IL, n // 2] ** 2
+        s[S_EVENT, n] = s[S_Q, n] - ratio * (s[S_IL, n] + bent * total)
     drop = _known_zeros(m[M_JUST], CHARGE_SHORT)
     if decay == 0.0:
         t = _first_crossing(s, order, h, TINY * c[K_SC_Q], drop)

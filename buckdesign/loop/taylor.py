@@ -144,28 +144,6 @@ def _inverse_inductance(c: Array, s: Array, n: int) -> None:
 
 
 @compiled
-def _available_current(c: Array, s: Array, n: int) -> None:
-    """Order ``n`` of the collector current that the charge carries: ``i (1 + i/I_K) = beta q / tau``."""
-    flow = c[K_BETA] * c[K_TAU_INV] * s[S_Q, n]
-    knee = c[K_IK_INV]
-    if knee == 0.0:
-        s[S_IAV, n] = flow
-    elif n == 0:
-        root = (1.0 + 4.0 * knee * flow) ** 0.5
-        s[S_ROOT, 0] = root
-        s[S_IAV, 0] = 2.0 * flow / (1.0 + root)
-    else:
-        total = 0.0
-        for j in range(1, (n + 1) // 2):
-            total += s[S_ROOT, j] * s[S_ROOT, n - j]
-        total = 4.0 * knee * flow - 2.0 * total
-        if n % 2 == 0:
-            total -= s[S_ROOT, n // 2] ** 2
-        s[S_ROOT, n] = total / (2.0 * s[S_ROOT, 0])
-        s[S_IAV, n] = s[S_ROOT, n] / (2.0 * knee)
-
-
-@compiled
 def square(s: Array, n: int) -> None:
     """Order ``n`` of the square of the choke current."""
     total = 0.0
@@ -270,11 +248,31 @@ def _passive_orders(c: Array, m: Discrete, s: Array, order: int) -> None:
     lift = 0.0 if still else (1.0 if biased else c[K_L_INV])
     l_l, l_c, l_r, l_h, l_a, l_1 = lift * l_l, lift * l_c, lift * l_r, lift * l_h, lift * l_a, lift * l_1
     bias = c[K_IBE]
+    lift_q = c[K_BETA] * c[K_TAU_INV]
+    knee = c[K_IK_INV]
+    over_knee = 0.5 / knee if knee > 0.0 else 0.0
+    root = 0.0
     for n in range(order):
         over = INVERSE[n]
         if needs_iav:
-            _available_current(c, s, n)
-            iav = s[S_IAV, n]
+            # i (1 + i/I_K) = beta q / tau, by the recurrence of the square root; written out here for speed
+            iav = lift_q * q
+            if knee > 0.0 and n == 0:
+                root = (1.0 + 4.0 * knee * iav) ** 0.5
+                s[S_ROOT, 0] = root
+                root = 0.5 / root
+                iav = 4.0 * iav * root / (1.0 + 2.0 * root)
+            elif knee > 0.0:
+                total = 0.0
+                for j in range(1, (n + 1) // 2):
+                    total += s[S_ROOT, j] * s[S_ROOT, n - j]
+                total = 4.0 * knee * iav - 2.0 * total
+                if n % 2 == 0:
+                    total -= s[S_ROOT, n // 2] ** 2
+                total *= root
+                s[S_ROOT, n] = total
+                iav = total * over_knee
+            s[S_IAV, n] = iav
         drive = (l_l * il + l_c * vc) + (l_r * ir + l_h * vh) + (l_a * iav + l_1)
         slope_c = (c_l * il + c_c * vc) + (c_r * ir + c_h * vh) + (c_a * iav + c_1)
         slope_r = (r_l * il + r_c * vc) + (r_r * ir + r_h * vh) + (r_a * iav + r_1)
