@@ -1,8 +1,8 @@
 """The README as data: its two command lines, and its examples with their output.
 
-``python -m tests.readme main-job`` and ``python -m tests.readme tests`` print a command line, for ``.ci/run``;
-``python -m tests.readme refresh`` runs every example and writes its output into the README. Standard library
-only, so that it runs before anything is installed.
+``python -m tests.readme main-job`` and ``python -m tests.readme tests`` print a command line, for
+``.ci/run``; ``python -m tests.readme refresh`` runs every example and writes its output into the README.
+Standard library only, so that it runs before anything is installed.
 """
 
 from __future__ import annotations
@@ -21,7 +21,9 @@ from pathlib import Path
 ROOT = Path(__file__).parents[1]
 README = ROOT / "README.md"
 
-MARKED = re.compile(r"<!-- (?P<mark>[^\n]+) -->\n```(?P<kind>\w+)\n(?P<body>.*?)^```$", re.DOTALL | re.MULTILINE)
+MARKED = re.compile(
+    r"<!-- (?P<mark>[^\n]+) -->\n```(?P<kind>\w+)\n(?P<body>.*?)^```$", re.DOTALL | re.MULTILINE
+)
 CONSOLE = re.compile(r"^```console\n(?P<body>.*?)^```$", re.DOTALL | re.MULTILINE)
 PART = re.compile(r"main job, (?:from \"(?P<first>[^\"]+)\"|start)(?: up to \"(?P<last>[^\"]+)\")?")
 
@@ -36,7 +38,7 @@ class Example:
     @property
     def is_reproducible(self) -> bool:
         """Whether every machine prints the same: nothing in it rests on a search by simulation."""
-        return re.search(r"buckdesign (design|simulate)|\.design\.toml", self.command) is None
+        return re.search(r"buckdesign (design|simulate|rectifiers)|\.design\.toml", self.command) is None
 
 
 def text() -> str:
@@ -103,7 +105,13 @@ def _split(body: str) -> tuple[str, str]:
 
 
 def run(command: str, folder: Path) -> str:
-    """What a command prints: on standard output or, where that stays empty, on standard error."""
+    """What a command prints: on standard output or, where that stays empty, on standard error.
+
+    Raises
+    ------
+    LookupError
+        It ended with a fault of the program itself.
+    """
     path = os.pathsep.join([sysconfig.get_path("scripts"), os.environ.get("PATH", "")])
     settings = {"PATH": path, "XDG_CONFIG_HOME": str(folder / "config"), "PYTHONUTF8": "1"}
     ended = subprocess.run(
@@ -115,6 +123,8 @@ def run(command: str, folder: Path) -> str:
         encoding="utf-8",
         check=False,
     )
+    if "internal error" in ended.stderr or "Traceback" in ended.stderr:
+        raise LookupError(f"{command}: {ended.stderr}")
     return ended.stdout or ended.stderr
 
 
@@ -124,15 +134,23 @@ def python_example() -> str:
 
 
 def run_python(code: str, folder: Path) -> str:
-    """What a program prints."""
+    """What a program prints.
+
+    Raises
+    ------
+    LookupError
+        It fails.
+    """
     ended = subprocess.run(
         [sys.executable, "-c", code],
         cwd=folder,
         env=os.environ | {"PYTHONUTF8": "1", "XDG_CONFIG_HOME": str(folder / "config")},
         capture_output=True,
         text=True,
-        check=True,
+        check=False,
     )
+    if ended.returncode != 0:
+        raise LookupError(f"the Python example: {ended.stderr}")
     return ended.stdout
 
 

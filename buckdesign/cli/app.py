@@ -25,6 +25,7 @@ COMMANDS: dict[str, str] = {
     "design": "Design, simulate and check a supply from a requirement.",
     "simulate": "Simulate one operating point, or the start from rest.",
     "choke": "Wind a choke, choose one, recognise a ring, show its bias curve.",
+    "rectifiers": "Compare rectifiers in a design, and where the choice flips.",
     "parts": "List, show and check part and core tables.",
 }
 """Command and its line in the list, in the order of the list; the command is `app` in ``cli/<name>.py``."""

@@ -48,6 +48,9 @@ def simulate(
     plot: Annotated[
         Path | None, typer.Option("--plot", metavar="FILE", help="Waveforms as a figure, .svg or .png.")
     ] = None,
+    budget: Annotated[
+        Path | None, typer.Option("--budget", metavar="FILE", help="Losses as a stacked bar, .svg or .png.")
+    ] = None,
     waveforms: Annotated[
         Path | None, typer.Option("--waveforms", metavar="FILE", help="Waveforms as a CSV table.")
     ] = None,
@@ -64,7 +67,7 @@ def simulate(
     from buckdesign.design.operating import simulate as run
     from buckdesign.design.requirement import read_requirement
 
-    _check_files(plot, waveforms, force)
+    _check_files((plot, budget), waveforms, force)
     tables = tables_with(parts)
     made = read_design(design, tables)
     wanted = None if requirement is None else read_requirement(requirement, tables)
@@ -81,20 +84,23 @@ def simulate(
         tables=tables,
     )
     _write_files(found, plot, waveforms, force)
+    if budget is not None:
+        _write_budget(found, budget, force)
     _print(found, json)
     if not found.point.holds:
         raise typer.Exit(LIMIT_FAILS)
 
 
-def _check_files(plot: Path | None, waveforms: Path | None, force: bool) -> None:
+def _check_files(figures: tuple[Path | None, ...], waveforms: Path | None, force: bool) -> None:
     """Refuse files that could not be written before anything is computed."""
     from buckdesign.design.safe_write import check_writable_name
 
-    if plot is not None:
-        from buckdesign.output.plots import figure_format
+    for figure in figures:
+        if figure is not None:
+            from buckdesign.output.plots import figure_format
 
-        figure_format(plot)
-        check_writable_name(plot, force=force)
+            figure_format(figure)
+            check_writable_name(figure, force=force)
     if waveforms is not None:
         check_writable_name(waveforms, force=force)
 
@@ -122,8 +128,17 @@ def _write_files(found: Simulation, plot: Path | None, waveforms: Path | None, f
         if found.start_waveforms is None:
             figure = waveform_figure(recorded, title, mean_output=mean)
         else:
-            figure = waveform_figure(recorded, f"Start from rest; then {title}")
+            figure = waveform_figure(recorded, f"Start from rest: {title.split(':')[0]}")
         _write(plot, figure_bytes(figure, figure_format(plot)), force)
+
+
+def _write_budget(found: Simulation, budget: Path, force: bool) -> None:
+    from buckdesign.output.budget_plot import budget_figure
+    from buckdesign.output.plots import figure_bytes, figure_format
+    from buckdesign.output.simulation import heading
+
+    figure = budget_figure(found.point, heading(found.point))
+    _write(budget, figure_bytes(figure, figure_format(budget)), force)
 
 
 def _write(path: Path, content: bytes, force: bool) -> None:

@@ -12,13 +12,32 @@ from buckdesign.design.losses import flux_density_swing, loop_losses
 from buckdesign.design.operated import Operated
 from buckdesign.design.operating_point import Transient
 from buckdesign.design.sections import DEVICES
+from buckdesign.design.temperatures import device_heat, heat_data, runaway_reach
+from buckdesign.loop.results import SteadyStates
 from buckdesign.physics.capacitor import tantalum_is_safe
 from buckdesign.physics.core_loss import RANGES as CORE_RANGES
+from buckdesign.physics.regulator import THERMAL_SHUTDOWN_C
 from buckdesign.physics.thermal import CORE_FAULT_C, CORE_WARNING_C
 from buckdesign.units import format_quantity
 
 AUDIBLE = 16e3
 """Frequency below which the choke may be heard [Hz] (common practice: the limit of hearing)."""
+
+RUNAWAY_CLOSE = 2.0
+"""Growth of the leakage up to runaway below which a warning is due [1] (own choice: parts differ by more)."""
+
+IGNITION_POWER = 15.0
+"""Output power above which a fault can ignite things [W] (IEC 62368-1 6.2.2, limit of PS1, from memory)."""
+
+FUSE_RATIO = (1.25, 1.6)
+"""Rating of a time-lag fuse over the input current at full load [1] (common practice, from memory)."""
+
+TOUCHABLE_V = 60.0
+"""Direct voltage above which touching is not safe [V] (IEC 62368-1 table 4, limit of ES1, from memory)."""
+
+DISCHARGE_V, DISCHARGE_C = 25.0, 25e-6
+"""Output above which a capacitor above this size discharges through the regulator [V], [F] (data sheets of
+the class, from memory)."""
 
 DRIVE_LIMITED = 0.05
 """Share of the conducting time in the active region from which the drive is too small [1] (own choice)."""
@@ -96,9 +115,22 @@ def _heat_warnings(operated: Operated, resolved: ResolvedDesign, index: int) -> 
     if operated.electrical_only:
         return []
     found = []
+    margin, begins = _runaway(operated, resolved, index)
     if operated.balance.runaway[index]:
         found.append(
-            "thermal runaway of the rectifier: with temperature its leakage grows faster than the heat leaves"
+            "thermal runaway of the rectifier: with temperature its leakage grows faster than the heat "
+            f"leaves, from {begins:.0f} degC ambient up"
+        )
+    elif margin < RUNAWAY_CLOSE:
+        found.append(
+            f"close to thermal runaway of the rectifier: {margin:.2g} times its leakage would do, or an "
+            f"ambient of {begins:.0f} degC"
+        )
+    if operated.junction("regulator")[index] > THERMAL_SHUTDOWN_C:
+        hot = operated.junction("regulator")[index]
+        found.append(
+            f"the regulator at {hot:.0f} degC would shut down (at about {THERMAL_SHUTDOWN_C:g} degC): "
+            "the output falls"
         )
     if not operated.is_settled[index]:
         found.append("losses and temperatures did not settle; the temperatures are those of the last run")
@@ -107,6 +139,16 @@ def _heat_warnings(operated: Operated, resolved: ResolvedDesign, index: int) -> 
     if CORE_WARNING_C < choke <= CORE_FAULT_C:
         found.append(f"choke at {choke:.0f} degC: iron powder ages from {CORE_WARNING_C:g} degC up")
     return found
+
+
+def _runaway(operated: Operated, resolved: ResolvedDesign, index: int) -> tuple[float, float]:
+    """Margin of the rectifier's leakage [1], ambient at which runaway begins [degC]; NaN: no leakage."""
+    part = slice(index, index + 1)
+    loop = SteadyStates(values=operated.loop.values[part], ends=operated.loop.ends[part])
+    heat = device_heat(operated.balance.losses)[part]
+    data = operated.data.part(np.array([index]))
+    margin, begins = runaway_reach(loop, heat, data, heat_data([resolved]), operated.ambient_c[part])
+    return float(margin[0]), float(begins[0])
 
 
 def _unknown_temperatures(operated: Operated, resolved: ResolvedDesign, index: int) -> list[str]:
@@ -284,16 +326,17 @@ def cautions(operated: Operated, resolved: ResolvedDesign, index: int) -> tuple[
     resolved : ResolvedDesign
         The design.
     index : int
-        Which point the numbers are taken at.
+        Which point the temperatures are taken at; fuse and faults go by the worst of all points.
 
     Returns
     -------
     tuple of str
         One sentence each.
     """
-    supply = float(operated.parameter("supply_voltage")[index])
+    supply = float(operated.parameter("supply_voltage").max())
     found = [
-        "the transistor removes the regulator's short-circuit protection: fuse the input; "
+        "the transistor removes the regulator's short-circuit protection: "
+        f"fuse the input ({_fuse(operated)}); "
         f"a shorted transistor puts the whole {supply:.3g} V on the load",
         _short_circuit(operated, index, supply),
         *_capacitor_cautions(resolved, operated, index, supply),
@@ -308,6 +351,7 @@ def cautions(operated: Operated, resolved: ResolvedDesign, index: int) -> tuple[
         hot.append("choke")
     if hot:
         found.append(f"hot to the touch, and its surroundings: {_listed(hot)}")
+    found += _safety(operated, resolved, index, supply)
     margin = operated.loop.column("start_margin")[index]
     if margin < 3.0:
         found.append("a supply that rises slowly may leave it unsaturated at first: switch it on fast")
@@ -316,6 +360,28 @@ def cautions(operated: Operated, resolved: ResolvedDesign, index: int) -> tuple[
         "low-voltage stage: whatever is on the mains side belongs to local codes and licensed practice",
     ]
     return tuple(found)
+
+
+def _fuse(operated: Operated) -> str:
+    current = float((operated.input_power / operated.parameter("supply_voltage")).max())
+    low, high = (format_quantity(ratio * current, "A", digits=2, ascii_only=True) for ratio in FUSE_RATIO)
+    return f"time-lag, {low} to {high} for this load"
+
+
+def _safety(operated: Operated, resolved: ResolvedDesign, index: int, supply: float) -> list[str]:
+    """Limits of safety standards that the stage passes."""
+    found = []
+    power, output = float(operated.output_power[index]), float(operated.set_voltage[index])
+    if supply > TOUCHABLE_V:
+        found.append(f"{supply:.3g} V: above {TOUCHABLE_V:g} V direct voltage is not safe to touch")
+    if power > IGNITION_POWER:
+        found.append(
+            f"{power:.0f} W can ignite things in a fault: fuse or electronic limit, "
+            "and nothing that burns close by"
+        )
+    if output > DISCHARGE_V and resolved.output_capacitor.capacitance > DISCHARGE_C:
+        found.append("output above 25 V: a diode from output to input keeps its capacitor off the regulator")
+    return found
 
 
 def _short_circuit(operated: Operated, index: int, supply: float) -> str:

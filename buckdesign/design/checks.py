@@ -14,21 +14,16 @@ import numpy as np
 from numpy.typing import NDArray
 
 from buckdesign.design.elements import ResolvedDesign
+from buckdesign.design.hot_parameters import RECTIFIER, TRANSISTOR
 from buckdesign.design.losses import Floats, input_ripple_rms
 from buckdesign.design.operated import Operated
 from buckdesign.design.operating_point import Check
 from buckdesign.design.ratings import RatingData, rating_data
 from buckdesign.design.sections import DEVICES
-from buckdesign.design.temperatures import (
-    RECTIFIER,
-    TRANSISTOR,
-    device_heat,
-    heat_data,
-    junctions,
-)
+from buckdesign.design.temperatures import HeatData, device_heat, heat_data, junctions
 from buckdesign.physics.bias import flux_density
 from buckdesign.physics.capacitor import electrolytic_life, ripple_rise
-from buckdesign.physics.diode import conduction_loss, parallel_share
+from buckdesign.physics.diode import conduction_loss, hottest_piece
 from buckdesign.physics.pnp import base_current
 from buckdesign.physics.regulator import current_limit
 from buckdesign.units import format_quantity
@@ -37,6 +32,10 @@ LIFE_WANTED = 8760.0
 """Life of an electrolytic below which a design is refused: a year of continuous running [h] (own choice)."""
 
 _ROUNDING = 1e-9
+
+
+REFERENCE_C = 25.0
+"""Margins of temperatures are relative to the rise from here to the limit [degC], whatever the ambient."""
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -132,14 +131,15 @@ def part_limits(operated: Operated, resolved: ResolvedDesign | Sequence[Resolved
         Always the same limits in the same order; `Limit.applies` says where one is known.
     """
     designs = [resolved] * len(operated) if isinstance(resolved, ResolvedDesign) else list(resolved)
-    rating = rating_data(designs)
+    rating, heat = rating_data(designs), heat_data(designs)
+    hottest = hottest_piece_at(operated, rating, heat)
     return [
         *_transistor_limits(operated, rating),
-        *_rectifier_limits(operated, rating),
+        *_rectifier_limits(operated, rating, hottest[0]),
         *_regulator_limits(operated, rating),
         *_capacitor_limits(operated, "output", rating.output),
         *_capacitor_limits(operated, "input", rating.input),
-        *_junction_limits(operated, rating, designs),
+        *_junction_limits(operated, rating, heat, hottest[1]),
         *_choke_limits(operated, rating),
     ]
 
@@ -188,13 +188,41 @@ def _base_drive(operated: Operated, rating: RatingData) -> Limit:
     )
 
 
-def _rectifier_limits(operated: Operated, rating: RatingData) -> list[Limit]:
+def hottest_piece_at(operated: Operated, rating: RatingData, heat: HeatData) -> tuple[Floats, Floats]:
+    """The piece of lowest drop among rectifiers in parallel, electro-thermally.
+
+    Parameters
+    ----------
+    operated : Operated
+        Operating points.
+    rating, heat : RatingData, HeatData
+        Of the same points.
+
+    Returns
+    -------
+    tuple of NDArray
+        Its mean current [A], and how much warmer it is than the mean of all [K]; shape (n,).
+    """
+    loop, pieces = operated.loop, rating.pieces
+    mean, rms = loop.column("rectifier_mean_a"), loop.column("rectifier_rms_a")
+    share = np.where(rms > 0.0, np.square(mean) / np.where(rms > 0.0, np.square(rms), 1.0), 0.0)
+    current = np.where(share > 0.0, mean / np.where(share > 0.0, share, 1.0), 0.0)
+    path = np.where(np.isfinite(heat.piece) & (not operated.electrical_only), heat.piece, 0.0) * share
+    most, warmer = hottest_piece(
+        current,
+        pieces,
+        operated.parameter("threshold"),
+        rating.slope,
+        rating.threshold_extra,
+        rating.forward_coefficient,
+        path,
+    )
+    return np.asarray(most * share, dtype=float), np.asarray(warmer * (1.0 - 1.0 / pieces), dtype=float)
+
+
+def _rectifier_limits(operated: Operated, rating: RatingData, share: Floats) -> list[Limit]:
     loop = operated.loop
     current = loop.column("rectifier_mean_a")
-    others = np.maximum(rating.pieces - 1.0, 1.0)
-    slope = np.maximum(rating.slope, 1e-6)
-    worst = parallel_share(current, 0.0, slope, rating.threshold_extra, slope / others)
-    share = np.where(rating.pieces > 1.0, worst, current)
     parallel = bool((rating.pieces > 1.0).any())
     return [
         _upper("rectifier reverse voltage", "V", loop.column("reverse_max_v"), rating.reverse_voltage),
@@ -254,7 +282,7 @@ def _capacitor_limits(operated: Operated, side: str, rating: Floats) -> list[Lim
 
 
 def _junction_limits(
-    operated: Operated, rating: RatingData, designs: Sequence[ResolvedDesign]
+    operated: Operated, rating: RatingData, heat: HeatData, warmer: Floats
 ) -> list[Limit]:
     """Junctions with drops at their limit values; typical temperatures beside them."""
     loop = operated.loop
@@ -270,8 +298,8 @@ def _junction_limits(
         loop.column("rectifier_mean_a"),
         loop.column("rectifier_rms_a"),
     )
-    heat = heat_data(designs)
     junction_c, _, _ = junctions(loop, power, operated.data, heat, operated.ambient_c)
+    junction_c[:, RECTIFIER] += warmer
     known = np.isfinite(heat.own) & (not operated.electrical_only)
     found = []
     for index, name in enumerate(DEVICES):
@@ -284,8 +312,9 @@ def _junction_limits(
                 value=junction_c[:, index],
                 limit=limit,
                 applies=applies,
-                span=limit - operated.ambient_c,
+                span=limit - REFERENCE_C,
                 typical=operated.junction(name),
+                note="hottest of the pieces" if name == "rectifier" and (warmer > 0.0).any() else "",
                 note_unknown="thermal runaway: no temperature balances the rectifier's leakage",
             )
         )
@@ -312,7 +341,7 @@ def _choke_limits(operated: Operated, rating: RatingData) -> list[Limit]:
             value=operated.balance.choke_c,
             limit=rating.choke_limit,
             applies=np.isfinite(rating.choke_limit) & wound,
-            span=rating.choke_limit - operated.ambient_c,
+            span=rating.choke_limit - REFERENCE_C,
             note="the larger of two methods",
         ),
     ]

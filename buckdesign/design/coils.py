@@ -101,13 +101,14 @@ def coil_trouble(requirement: Requirement, tables: Tables, found: Found) -> str:
     need = choke_need(requirement, found, 0)
     choice = choose_chokes(tables, need, space=_space(requirement, HARD_SPACE), limits=_limits(requirement))
     reasons = sorted(choice.rejected.items(), key=lambda pair: -pair[1])
-    inductance = format_quantity(need.inductance, "H", ascii_only=True)
-    return (
-        f"no winding gives {inductance} at {need.current:g} A: of {choice.evaluated} tried "
-        + ", ".join(f"{count} {reason}" for reason, count in reasons[:3] if count)
-        if choice.evaluated
-        else f"no winding gives {inductance} at {need.current:g} A on the rings and materials allowed"
-    )
+    wanted = f"{format_quantity(need.inductance, 'H', ascii_only=True)} at {need.current:g} A"
+    if choice.evaluated:
+        counted = ", ".join(f"{count} {reason}" for reason, count in reasons[:3] if count)
+        return f"no winding gives {wanted}: of {choice.evaluated} tried {counted}"
+    kinds = {tables.material(name).kind for name in requirement.prefer.material}
+    if kinds == {"ferrite"}:
+        return f"no winding gives {wanted}: a ferrite ring without a gap saturates under the load current"
+    return f"no winding gives {wanted}: the tables lack the bias law or the losses of the materials allowed"
 
 
 def choke_need(requirement: Requirement, found: Found, at: int) -> ChokeNeed:

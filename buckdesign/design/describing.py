@@ -3,10 +3,8 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from typing import Any
-
-import numpy as np
 
 from buckdesign.design.blueprint import Blueprint
 from buckdesign.design.design_result import Alternative
@@ -194,16 +192,3 @@ def gathered(texts: Sequence[Sequence[str]]) -> tuple[str, ...]:
             if len(text) >= len(lots.get(kind, "")):
                 lots[kind] = text
     return tuple(lots.values())
-
-
-def summary_numbers(corners: Sequence[OperatingPoint], full_load: float) -> Mapping[str, float]:
-    """The numbers that sum a range up: largest ripple, lowest efficiency at full load, frequencies above
-    half."""
-    full = [point for point in corners if point.load_a >= full_load * (1.0 - 1e-6)]
-    upper = [point.frequency_hz for point in corners if point.load_a >= 0.5 * full_load * (1.0 - 1e-6)]
-    return {
-        "ripple_v": float(np.max([point.ripple_v for point in corners])),
-        "efficiency": float(np.min([point.efficiency for point in full])),
-        "frequency_low_hz": float(np.min(upper)),
-        "frequency_high_hz": float(np.max(upper)),
-    }

@@ -14,6 +14,7 @@ from buckdesign.design.sections import (
     ChokeSection,
     RectifierSection,
     RegulatorSection,
+    ThermalSection,
     TransistorSection,
 )
 from buckdesign.errors import UnknownNameError
@@ -35,6 +36,7 @@ _SECTIONS: Mapping[str, Any] = {
     "output_capacitor": CapacitorSection,
     "input_capacitor": CapacitorSection,
 }
+DEFAULT_AMBIENT_C = ThermalSection.__dataclass_fields__["ambient"].default
 _WINDING = ("core", "material", "turns", "wire")
 _WINDING_OPTIONS = ("permeability", "stack", "strands")
 _BOUGHT = ("inductance", "resistance", "saturation")
@@ -59,6 +61,7 @@ def check_design(tree: Mapping[str, Any], reading: Reading) -> None:
     if "choke" in sections:
         _check_choke(sections["choke"], reading)
     _check_heatsinks(sections.get("thermal", {}), reading)
+    _check_junction_limits(reading)
 
 
 def _check_complete(sections: Mapping[str, Any], reading: Reading) -> None:
@@ -143,6 +146,14 @@ def _check_bore(reading: Reading) -> None:
         shown = [format_quantity(value, "m", ascii_only=True) for value in (outer, bore)]
         allowed = f"with enamel {shown[0]} thick, it must be thinner than the bore of {core}, {shown[1]}"
         reading.fault(("choke", "wire"), wire, allowed)
+
+
+def _check_junction_limits(reading: Reading) -> None:
+    ambient = parse_quantity(reading.given.get("thermal.ambient", DEFAULT_AMBIENT_C), "degC")
+    for name in DEVICES:
+        limit = reading.given.get(f"{name}.junction_limit")
+        if limit is not None and parse_quantity(limit, "degC") <= ambient:
+            reading.fault((name, "junction_limit"), limit, f"must be above the ambient, {ambient:g} degC")
 
 
 def _check_heatsinks(thermal: Mapping[str, Any], reading: Reading) -> None:

@@ -105,8 +105,8 @@ class DesignResult:
     alternatives : tuple of Alternative
         Best first.
     frequency_spread_hz : tuple of float
-        Frequency at nominal supply and full load with the regulator's output inductance at the top and at the
-        bottom of its band [Hz]: its uncertainty is the largest of all.
+        Lowest and highest frequency at nominal supply and full load, over the range of ambient and with the
+        regulator's output inductance at both ends of its band, the largest uncertainty of all [Hz].
     values : Mapping
         Every chosen component value; units in the keys.
     warnings, cautions, assumptions : tuple of str

@@ -89,15 +89,16 @@ def result_of(requirement: Requirement, found: Attempt, blocking: tuple[Blocking
 
 
 def frequency_spread(requirement: Requirement, best: Judged) -> tuple[float, float]:
-    """Frequency at nominal supply and full load with the regulator's lag at both ends of its band [Hz]."""
+    """Lowest and highest frequency at nominal supply and full load, over ambient and regulator lag [Hz]."""
     operated = best.operated
     full = np.flatnonzero(operated.load >= requirement.output.current_max * (1.0 - 1e-6))
     distance = np.abs(operated.parameter("supply_voltage")[full] - requirement.supply.voltage_nominal)
-    rows = np.repeat(operated.rows[full[int(np.argmin(distance))]][None, :], 2, axis=0)
+    nominal = full[distance <= distance.min() + 1e-9]
     factor = best.resolved.regulator.output_inductance_factor
-    rows[:, COLUMN["output_inductance"]] *= (factor, 1.0 / factor)
-    slow, fast = steady_states(rows, jobs=1).column("frequency_hz")
-    return float(min(slow, fast)), float(max(slow, fast))
+    rows = np.concatenate([operated.rows[nominal], operated.rows[nominal]])
+    rows[:, COLUMN["output_inductance"]] *= np.repeat((factor, 1.0 / factor), len(nominal))
+    found = steady_states(rows, jobs=1).column("frequency_hz")
+    return float(found.min()), float(found.max())
 
 
 def _urgency(check: object) -> tuple[bool, float]:

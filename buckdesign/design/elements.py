@@ -78,8 +78,8 @@ class TransistorElement:
 
     Attributes
     ----------
-    name : str or None
-        Part.
+    name, package : str or None
+        Part, its case.
     gain_min, gain : float
         At small collector current, guaranteed and typical [1].
     gain_knee : float
@@ -105,6 +105,7 @@ class TransistorElement:
     """
 
     name: str | None
+    package: str | None
     gain_min: float
     gain: float
     gain_knee: float

@@ -116,7 +116,8 @@ class HotData:
     forward_coefficient : NDArray
         Change of the rectifier's forward drop [V/K].
     lifetime, pieces : NDArray
-        Lifetime of the carriers in a piece [s], NaN where the recovery charge stays as given; pieces in parallel.
+        Lifetime of the carriers in a piece [s], NaN where the recovery charge stays as given; pieces in
+        parallel.
     forced_gain : NDArray
         Collector over base current at which the saturation voltage was measured [1]; NaN: not followed.
     output : EsrLaw
@@ -223,7 +224,8 @@ def parameters_at(
     Returns
     -------
     NDArray
-        New rows: base-emitter voltage, gain, charge lifetime and saturation drop of the transistor, threshold and
+        New rows: base-emitter voltage, gain, charge lifetime and saturation drop of the transistor,
+        threshold and
         recovery charge of the rectifier, dropout of the regulator, resistance of the choke, ESR.
     """
     low, high = PARAMETER_RANGE_C
@@ -236,7 +238,8 @@ def parameters_at(
     less = DROPOUT_TEMPERATURE_COEFFICIENT * (warm[:, REGULATOR] - REFERENCE_C)
     changed[:, dropout] = np.maximum(rows[:, dropout] + less, 0.0)
     followed = np.minimum(choke_c, COPPER_CEILING_C)
-    changed[:, COLUMN["choke_resistance"]] *= np.where(np.isnan(choke_c), 1.0, copper_resistance_factor(followed))
+    copper = np.where(np.isnan(choke_c), 1.0, copper_resistance_factor(followed))
+    changed[:, COLUMN["choke_resistance"]] *= copper
     if loop is not None:
         _follow_loop(changed, rows, hot, warm, loop)
     if ambient_c is not None:
@@ -256,15 +259,15 @@ def _heat_transistor(changed: Floats, rows: Floats, junction_c: Floats) -> None:
 
 def _follow_loop(changed: Floats, rows: Floats, hot: HotData, junction_c: Floats, loop: SteadyStates) -> None:
     """Recovery charge and saturation voltage at the currents of a run."""
-    drive = loop.column("regulator_max_a") - changed[:, COLUMN["base_emitter"]] / changed[:, COLUMN["base_resistance"]]
+    bypassed = changed[:, COLUMN["base_emitter"]] / changed[:, COLUMN["base_resistance"]]
+    drive = loop.column("regulator_max_a") - bypassed
     driven = drive > 1e-6
     drive = np.where(driven, drive, 1.0)
     knee = changed[:, COLUMN["gain_knee"]]
     charge, slope = COLUMN["recovery_charge"], turn_on_slope(changed, loop, drive)
-    recovered = hot.pieces * charge_at_crossing(
-        valley_current(loop) / hot.pieces, slope / hot.pieces, np.where(np.isnan(hot.lifetime), 0.0, hot.lifetime)
-    )
-    recovered = charge_at_temperature(recovered, junction_c[:, RECTIFIER])
+    lifetime = np.where(np.isnan(hot.lifetime), 0.0, hot.lifetime)
+    left = charge_at_crossing(valley_current(loop) / hot.pieces, slope / hot.pieces, lifetime)
+    recovered = charge_at_temperature(hot.pieces * left, junction_c[:, RECTIFIER])
     changed[:, charge] = np.where(np.isnan(hot.lifetime) | ~driven, rows[:, charge], recovered)
     forced = loop.column("choke_max_a") / drive
     amplification = gain(loop.column("choke_max_a"), changed[:, COLUMN["gain"]], knee)
@@ -302,7 +305,8 @@ def turn_on_slope(rows: Floats, loop: SteadyStates, drive: Floats) -> Floats:
 
     Notes
     -----
-    Derived from charge control: ``beta i_B / tau`` with half of the largest base current, which is still rising.
+    Derived from charge control: ``beta i_B / tau`` with half of the largest base current, which is still
+    rising.
     """
     amplification = gain(valley_current(loop), rows[:, COLUMN["gain"]], rows[:, COLUMN["gain_knee"]])
     return np.asarray(0.5 * amplification * drive / rows[:, COLUMN["charge_time"]], dtype=float)

@@ -226,7 +226,11 @@ def _score(
         for check in checks
         if check.margin is not None and check.holds and not _is_narrow(check)
     )
-    points = PointGrid(supply=operated.parameter("supply_voltage"), load=operated.load)
+    points = PointGrid(
+        supply=operated.parameter("supply_voltage"),
+        load=operated.load,
+        is_cold=np.zeros(len(operated), dtype=bool),
+    )
     added = operated.total_loss + operated.output_power - operated.loop.column("input_w")
     liked = comfort(requirement, points, behaviour(operated.loop, added, len(points)))
     return 100.0 * broken + 20.0 * held + thin + float(liked[0]) + _size(requirement, operated, plan_rh)

@@ -365,8 +365,8 @@ def transistor_leakage_loss(
 
     Notes
     -----
-    Derived: the voltage across it averages to ``V_in - V_out - R_L I`` over all times, nearly all of it while it is
-    off.
+    Derived: the voltage across it averages to ``V_in - V_out - R_L I`` over all times, nearly all of it
+    while it is off.
     """
     across = rows[:, COLUMN["supply_voltage"]] - loop.column("output_voltage_v")
     across = np.maximum(across - rows[:, COLUMN["choke_resistance"]] * loop.column("choke_mean_a"), 0.0)

@@ -21,11 +21,12 @@ from buckdesign.design.scoring import (
     Violations,
     behaviour,
     comfort,
+    joined_points,
     point_grid,
     violations,
 )
 from buckdesign.design.sizing import ONSET_FACTOR, base_resistors, conduction_onset, lowest_nominal_highest
-from buckdesign.design.trials import Bench, Trials, grid, joined
+from buckdesign.design.trials import USUAL_FREQUENCY, Bench, Climate, Trials, grid, joined
 from buckdesign.loop.results import Effort, steady_states
 
 Floats = NDArray[np.float64]
@@ -47,6 +48,9 @@ COUPLED_RESISTORS = (8.2e3, 18e3, 39e3, 82e3)
 COUPLED_CAPACITORS = (100e-12, 220e-12, 470e-12, 1000e-12)
 """Feedback capacitors [F] (E6)."""
 
+SMALL_RANGE = 8.0
+"""Range of ambients whose lower end is not simulated in the search [K] (own choice)."""
+
 SMALL_DRIVE_RESISTANCE = 4.7
 """Drive resistor below which it hardly limits a short circuit; each halving costs 0.5 [ohm] (own choice)."""
 
@@ -55,9 +59,6 @@ COUPLED_HANDICAP = 3.0
 
 LARGEST_FEEDBACK = 10e6
 """Largest resistor that is commonly sold [ohm] (common practice)."""
-
-USUAL_FREQUENCY = 12e3
-"""Frequency for a first inductance where the requirement has no band [Hz] (typical of the circuit)."""
 
 FREQUENCY_LIMITS = (8e3, 30e3)
 """Frequencies that a first inductance is sized for [Hz] (what the circuit reaches)."""
@@ -150,17 +151,28 @@ def critical_points(requirement: Requirement) -> PointGrid:
     low, nominal, high = requirement.supply.voltage
     load = requirement.output.current_max
     light = max(0.1 * load, requirement.output.current_min)
-    return PointGrid(
+    half = max(0.5 * load, requirement.output.current_min)
+    hot = PointGrid(
         supply=np.array([low, high, high, nominal]),
-        load=np.array([load, load, light, max(0.5 * load, requirement.output.current_min)]),
+        load=np.array([load, load, light, half]),
+        is_cold=np.zeros(4, dtype=bool),
     )
+    if not has_cold(requirement):
+        return hot
+    return joined_points([hot, point_grid((high,), (load,), is_cold=True)])
+
+
+def has_cold(requirement: Requirement) -> bool:
+    """Whether the lowest ambient is far enough from the highest to be simulated too."""
+    low, high = requirement.limits.ambient
+    return high - low > SMALL_RANGE
 
 
 def corner_points(requirement: Requirement, bench: Bench) -> PointGrid:
     """Both ends of the supply with the loads at which limits bind: smallest, just switching, a tenth, half,
     full.
 
-    At the nominal supply half and full load only.
+    At the nominal supply, and at the lowest ambient, half and full load only.
     """
     low, high = requirement.output.current
     onset = ONSET_FACTOR * conduction_onset(
@@ -171,13 +183,14 @@ def corner_points(requirement: Requirement, bench: Bench) -> PointGrid:
     )
     loads = {load for load in (low, onset, 0.1 * high, 0.5 * high) if low <= load < high} | {high}
     lowest, nominal, highest = requirement.supply.voltage
-    ends = point_grid(lowest_nominal_highest((lowest, highest)), sorted(loads))
-    if not lowest < nominal < highest:
-        return ends
-    middle = point_grid((nominal,), sorted(load for load in loads if load >= 0.5 * high))
-    return PointGrid(
-        supply=np.concatenate([ends.supply, middle.supply]), load=np.concatenate([ends.load, middle.load])
-    )
+    ends = lowest_nominal_highest((lowest, highest))
+    upper = sorted(load for load in loads if load >= 0.5 * high)
+    parts = [point_grid(ends, sorted(loads))]
+    if lowest < nominal < highest:
+        parts.append(point_grid((nominal,), upper))
+    if has_cold(requirement):
+        parts.append(point_grid(ends, upper, is_cold=True))
+    return joined_points(parts)
 
 
 def _coarse(requirement: Requirement, bench: Bench) -> Trials:
@@ -288,7 +301,8 @@ class _Run:
         requirement, bench = self.requirement, self.bench
         trials = trials.take(bench.is_drivable(trials))
         lots = [
-            bench.rows(trials, supply, load) for supply, load in zip(points.supply, points.load, strict=True)
+            bench.rows(trials, supply, load, Climate.COLD if is_cold else Climate.HOT)
+            for supply, load, is_cold in zip(points.supply, points.load, points.is_cold, strict=True)
         ]
         rows = np.stack(lots, axis=1).reshape(-1, lots[0].shape[1])
         loop = steady_states(rows, effort=COARSE, jobs=self.jobs)
@@ -317,8 +331,8 @@ class _Run:
 def size_cost(requirement: Requirement, bench: Bench, trials: Trials) -> Floats:
     """Cost of what is large or special.
 
-    0.8 for each doubling of the choke's energy and 0.4 of capacitance beyond the usual, 0.5 for each halving of a
-    small drive resistor, 0.7 for an output capacitor that is no ordinary one of low impedance.
+    0.8 for each doubling of the choke's energy and 0.4 of capacitance beyond the usual, 0.5 for each halving
+    of a small drive resistor, 0.7 for an output capacitor that is no ordinary one of low impedance.
     """
     output = requirement.output
     energy = 0.5 * trials.inductance * output.current_max**2

@@ -10,9 +10,12 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 
 from buckdesign.design.advisories import MODEL_ASSUMPTIONS, cautions, point_warnings, start_warnings
+from buckdesign.design.capacitor_load import capacitor_loads
 from buckdesign.design.checks import Limit, checks_at, part_limits
 from buckdesign.design.design_file import Design
 from buckdesign.design.elements import ResolvedDesign
+from buckdesign.design.heat_sinks import heat_sinks
+from buckdesign.design.linear_alternative import linear_alternative
 from buckdesign.design.operated import (
     Operated,
     Points,
@@ -216,9 +219,16 @@ def simulate(
         start=start,
     )
     point = checked_points(operated, resolved, requirement)[0]
+    point = replace(point, capacitors=capacitor_loads(operated, resolved, 0))
+    if not electrical_only:
+        point = replace(
+            point,
+            heat_sinks=heat_sinks(operated, resolved, 0),
+            linear=linear_alternative(operated, resolved, 0),
+        )
     if not from_rest:
         return Simulation(point=point, operated=operated)
-    transient, recorded = start_from_rest(operated)
+    transient, recorded = start_from_rest(operated, resolved)
     point = replace(point, transient=transient, warnings=start_warnings(transient, resolved) + point.warnings)
     return Simulation(point=point, operated=operated, start_waveforms=recorded)
 

@@ -4,7 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, fields
-from typing import Any
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from buckdesign.design.capacitor_load import CapacitorLoad
+    from buckdesign.design.heat_sinks import HeatSinks
+    from buckdesign.design.linear_alternative import LinearAlternative
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -112,6 +117,12 @@ class OperatingPoint:
         [degC], envelope of the wound ring [cm3].
     transient : Transient or None
         Start from rest.
+    capacitors : Mapping or None
+        ``output``, ``input``: what they carry and how long they last.
+    heat_sinks : HeatSinks or None
+        What the devices need.
+    linear : LinearAlternative or None
+        The same job done by the regulator alone.
     checks : tuple of Check
         Limits.
     warnings, cautions, assumptions : tuple of str
@@ -145,6 +156,9 @@ class OperatingPoint:
     choke_c: float | None
     choke_volume_cm3: float | None
     transient: Transient | None = None
+    capacitors: Mapping[str, CapacitorLoad | None] | None = None
+    heat_sinks: HeatSinks | None = None
+    linear: LinearAlternative | None = None
     checks: tuple[Check, ...] = ()
     warnings: tuple[str, ...] = ()
     cautions: tuple[str, ...] = ()
@@ -166,8 +180,13 @@ class OperatingPoint:
                 case tuple():
                     shown[member.name] = [one.to_dict() if isinstance(one, Check) else one for one in value]
                 case Mapping():
-                    shown[member.name] = dict(value)
+                    shown[member.name] = {key: _plain(one) for key, one in value.items()}
                 case _:
-                    shown[member.name] = value
+                    shown[member.name] = _plain(value)
         shown["warnings"] += shown.pop("cautions")
         return shown
+
+
+def _plain(value: Any) -> Any:
+    """The value, or what it is by key."""
+    return value.to_dict() if hasattr(value, "to_dict") else value

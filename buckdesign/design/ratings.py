@@ -23,7 +23,8 @@ class RatingData:
     saturation_extra : NDArray
         Saturation drop at its limit over the typical one, threshold [V] and slope [ohm], shape (n, 2).
     threshold_extra, slope_extra : NDArray
-        Forward drop of a rectifier at its limit over the typical one [V], [ohm].
+        Forward drop of a rectifier at its limit over the typical one [V], [ohm]; in parallel the first
+        also counts as the spread between pieces.
     output, input : NDArray
         Rated voltage [V], ripple current [A], life [h] and its temperature [degC], shape (n, 4).
     junction_limit : NDArray
@@ -43,6 +44,7 @@ class RatingData:
     reverse_voltage: Floats
     average_current: Floats
     threshold_extra: Floats
+    forward_coefficient: Floats
     slope: Floats
     slope_extra: Floats
     pieces: Floats
@@ -95,6 +97,7 @@ def _rectifier_record(rectifier: RectifierElement) -> dict[str, Any]:
         "reverse_voltage": _known(rectifier.reverse_voltage),
         "average_current": _known(rectifier.average_current),
         "threshold_extra": rectifier.threshold_limit - rectifier.threshold,
+        "forward_coefficient": rectifier.forward_coefficient,
         "slope": rectifier.slope,
         "slope_extra": rectifier.slope_limit - rectifier.slope,
         "pieces": float(rectifier.parallel),

@@ -33,11 +33,12 @@ SATURATION_THRESHOLD = 0.2
 """Saturation voltage of a power transistor extrapolated to no current [V] (common practice, no source)."""
 
 POWER_LEAKAGE, POWER_LEAKAGE_C = 5e-3, 150.0
-"""Collector leakage of a power transistor where its sheet is not at hand [A] at a junction temperature [degC] (from
+"""Collector leakage of a power transistor where its sheet is not at hand [A] at a junction temperature
+[degC] (from
 memory: limits of registered TO-3 types are 5-10 mA; its loss is of the order of a milliwatt)."""
 
 STANDARD_LIFETIME = 1e-6
-"""Lifetime of the carriers in a rectifier without recovery data [s] (from memory: standard rectifiers, about 1 us)."""
+"""Lifetime of the carriers in a rectifier without recovery data [s] (from memory: standard ones, 1 us)."""
 
 ONE_POINT_THRESHOLD_SHARE = 0.75
 """Threshold over forward drop at rated current where a sheet gives one point (common practice, no source: the
@@ -77,6 +78,7 @@ def resolve_transistor(
     drop, resistance = section.saturation_voltage, section.saturation_resistance
     return TransistorElement(
         name=None if part is None else part.name,
+        package=None if part is None else part.package or None,
         gain_min=typical if part is None else min(law[0], typical),
         gain=typical,
         gain_knee=first_known(section.gain_knee, law[1]),
@@ -245,7 +247,7 @@ def _leakage_coefficient(part: Rectifier | None) -> float:
 def _recovery(
     section: RectifierSection, part: Rectifier | None, assumptions: list[str]
 ) -> tuple[float, float | None]:
-    """Recovery charge and the current it was measured at; a part without either is taken as a standard rectifier."""
+    """Recovery charge and the current it was measured at; a part without counts as a standard rectifier."""
     if section.recovery_charge is not None:
         return section.recovery_charge, None
     if part is None:
@@ -254,7 +256,8 @@ def _recovery(
     if charge is None and part.kind != "Schottky":
         current = part.average_current if current is None else current
         charge = float(charge_at_crossing(current, TEST_SLOPE, STANDARD_LIFETIME))
-        assumptions.append(f"{part.name}: no recovery data, taken as a standard rectifier, {charge * 1e9:.0f} nC")
+        shown = f"{charge * 1e9:.0f} nC"
+        assumptions.append(f"{part.name}: no recovery data, taken as a standard rectifier, {shown}")
     return (charge, current) if charge else (0.0, None)
 
 

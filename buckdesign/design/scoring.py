@@ -50,19 +50,33 @@ class PointGrid:
     ----------
     supply, load : ndarray
         [V], [A].
+    is_cold : ndarray of bool
+        At the lowest instead of the highest ambient.
     """
 
     supply: Floats
     load: Floats
+    is_cold: NDArray[np.bool_]
 
     def __len__(self) -> int:
         return len(self.supply)
 
 
-def point_grid(supplies: Sequence[float], loads: Sequence[float]) -> PointGrid:
-    """All combinations of supplies [V] and loads [A]."""
+def point_grid(supplies: Sequence[float], loads: Sequence[float], *, is_cold: bool = False) -> PointGrid:
+    """All combinations of supplies [V] and loads [A], at the highest or the lowest ambient."""
     supply, load = (axis.ravel() for axis in np.meshgrid(supplies, loads, indexing="ij"))
-    return PointGrid(supply=np.asarray(supply, dtype=float), load=np.asarray(load, dtype=float))
+    return PointGrid(
+        supply=np.asarray(supply, dtype=float),
+        load=np.asarray(load, dtype=float),
+        is_cold=np.full(supply.shape, is_cold),
+    )
+
+
+def joined_points(parts: Sequence[PointGrid]) -> PointGrid:
+    """Several grids as one."""
+    return PointGrid(
+        **{one.name: np.concatenate([getattr(part, one.name) for part in parts]) for one in fields(PointGrid)}
+    )
 
 
 @dataclass(frozen=True, kw_only=True)

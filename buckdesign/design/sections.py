@@ -113,7 +113,7 @@ class RegulatorSection:
     dropout: float | None = quantity("V", above=False)
     dropout_resistance: float | None = quantity("ohm", above=False)
     max_difference: float | None = quantity("V")
-    junction_case: float | None = quantity("K/W", above=False)
+    junction_case: float | None = quantity("K/W")
     junction_limit: float | None = temperature()
 
 
@@ -174,7 +174,7 @@ class TransistorSection:
     saturation_resistance: float | None = quantity("ohm", above=False)
     collector_voltage: float | None = quantity("V")
     collector_current: float | None = quantity("A")
-    junction_case: float | None = quantity("K/W", above=False)
+    junction_case: float | None = quantity("K/W")
     junction_limit: float | None = temperature()
 
 
@@ -212,7 +212,7 @@ class RectifierSection:
     capacitance: float | None = quantity("F", above=False)
     reverse_voltage: float | None = quantity("V")
     average_current: float | None = quantity("A")
-    junction_case: float | None = quantity("K/W", above=False)
+    junction_case: float | None = quantity("K/W")
     junction_limit: float | None = temperature()
 
 
@@ -291,7 +291,7 @@ class DeviceThermal:
         Own heat sink and insulating pad [K/W].
     """
 
-    heatsink: float | None = quantity("K/W", above=False)
+    heatsink: float | None = quantity("K/W")
     pad: float | None = quantity("K/W", above=False)
 
 
@@ -314,7 +314,7 @@ class ThermalSection:
     """
 
     ambient: float = temperature(default=25.0)
-    heatsink: float | None = quantity("K/W", above=False)
+    heatsink: float | None = quantity("K/W")
     on_heatsink: tuple[str, ...] | None = listed(ChoicesKey(words=DEVICES))
     pad: float | None = quantity("K/W", above=False)
     transistor: DeviceThermal | None = field(default=None, metadata=table(DeviceThermal))

@@ -14,7 +14,7 @@ from buckdesign.design.elements import RegulatorElement, TransistorElement
 from buckdesign.design.requirement import Requirement
 from buckdesign.errors import InfeasibleError
 from buckdesign.physics.pnp import base_current
-from buckdesign.physics.preferred import nearest, next_above, next_below
+from buckdesign.physics.preferred import nearest, next_below
 from buckdesign.physics.regulator import base_drive_headroom, lower_resistor
 
 DIVIDER_SERIES = "E96"
@@ -300,8 +300,3 @@ def range_loads(requirement: Requirement, onset: float) -> tuple[float, ...]:
         _, below, above = max(gaps)
         inside = sorted({*inside, 0.5 * (below + above)})
     return tuple(inside)
-
-
-def preferred_above(value: float, series: str = "E12") -> float:
-    """Smallest preferred value that is not below the wanted one [same unit]."""
-    return float(next_above(value, series))

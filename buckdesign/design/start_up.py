@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
+from buckdesign.design.elements import ResolvedDesign
 from buckdesign.design.operated import Operated
 from buckdesign.design.operating_point import Transient
 from buckdesign.loop.accounting import (
@@ -17,6 +18,7 @@ from buckdesign.loop.accounting import (
 )
 from buckdesign.loop.parameters import LoopParameters
 from buckdesign.loop.results import Trajectory, Waveforms, trajectory, waveforms
+from buckdesign.physics.safe_area import power_limit, safe_area_margin, safe_current
 
 SETTLED_SHARE = 0.01
 """Part of the mean output by which it may still stray from its steady band to count as settled [1]
@@ -31,13 +33,15 @@ SPACING = 400_000
 _REST = (0.0, 0.0, 0.0, 0.0, 0.0)
 
 
-def start_from_rest(operated: Operated) -> tuple[Transient, Waveforms]:
+def start_from_rest(operated: Operated, resolved: ResolvedDesign) -> tuple[Transient, Waveforms]:
     """Start of the first point.
 
     Parameters
     ----------
     operated : Operated
         Operating points; the steady state of the first tells when it has settled.
+    resolved : ResolvedDesign
+        The design.
 
     Returns
     -------
@@ -60,7 +64,8 @@ def start_from_rest(operated: Operated) -> tuple[Transient, Waveforms]:
     time = recorded.column("time_s")
     until = float(time[-1]) if settling is None else settling
     run = trajectory(parameters, start=_REST, cycles=1_000_000, span=max(until, 1e-6))
-    return _transient(recorded, run, mean, settling, parameters), _shown(recorded, settling)
+    margin = _safe_area_margin(recorded, resolved, parameters, float(operated.ambient_c[0]))
+    return _transient(recorded, run, mean, settling, parameters, margin), _shown(recorded, settling)
 
 
 def _settling(recorded: Waveforms, low: float, high: float) -> float | None:
@@ -74,8 +79,9 @@ def _settling(recorded: Waveforms, low: float, high: float) -> float | None:
 
 
 def _transient(
-    recorded: Waveforms, run: Trajectory, mean: float, settling: float | None, parameters: LoopParameters
-) -> Transient:
+    recorded: Waveforms, run: Trajectory, mean: float, settling: float | None, parameters: LoopParameters,
+    margin: float | None,
+) -> Transient:  # fmt: skip
     """Peaks and energies; those of the run are exact, those of the samples reach beyond it."""
     output = recorded.column("output_voltage_v")
     reached = np.flatnonzero(output >= mean)
@@ -87,10 +93,32 @@ def _transient(
         settling_s=settling,
         transistor_energy_j=float(accounts[A_COND] + accounts[A_SWITCH]),
         transistor_peak_w=max(float(accounts[A_POWER_MAX]), _peak_power(recorded, parameters)),
-        safe_area_margin=None,
+        safe_area_margin=margin,
         regulator_energy_j=float(accounts[A_REGULATOR]),
         drive_resistor_energy_j=float(accounts[A_DRIVE]),
     )
+
+
+def _safe_area_margin(
+    recorded: Waveforms, resolved: ResolvedDesign, parameters: LoopParameters, ambient_c: float
+) -> float | None:
+    """Smallest distance to the area for direct current, case at ambient; None where it is not known.
+
+    A pulse may go further than that by an amount that no table here knows: a negative margin calls for a
+    look at the data sheet.
+    """
+    part = resolved.transistor
+    needed = (
+        part.breakdown_voltage, part.breakdown_current, part.collector_current, part.collector_voltage,
+        part.junction_case, part.junction_limit_c,
+    )  # fmt: skip
+    if any(value is None for value in needed):
+        return None
+    voltage, current, most, rated, case, limit = (float(value) for value in needed if value is not None)
+    across = parameters.supply_voltage - recorded.column("switch_node_v")
+    power = power_limit(limit, ambient_c, case)
+    allowed = safe_current(np.maximum(across, 0.0), most, rated, power, voltage, current)
+    return float(np.min(safe_area_margin(recorded.column("collector_current_a"), allowed)))
 
 
 def _peak_power(recorded: Waveforms, parameters: LoopParameters) -> float:

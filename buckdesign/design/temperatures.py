@@ -46,7 +46,7 @@ from buckdesign.design.sections import DEVICES
 from buckdesign.loop.parameters import COLUMN
 from buckdesign.loop.results import SteadyStates
 from buckdesign.physics.convection import ring_rise
-from buckdesign.physics.runaway import junction_with_leakage
+from buckdesign.physics.runaway import junction_with_leakage, runaway_margin, runaway_room
 from buckdesign.physics.thermal import ring_rise_surface_rule
 
 MIXING = (-9.0, 0.95)
@@ -60,14 +60,18 @@ SETTLED = 0.5
 of the loop by 0.3 % at most, and the temperatures by about a tenth of it)."""
 
 SETTLED_IRREGULAR = 2.0
-"""The same for irregular oscillation, whose averages differ from run to run [K] (own choice)."""
+"""The same for oscillation that is irregular or repeats only after several cycles, whose averages jump
+from run to run [K] (own choice)."""
+
+RESTLESS = 8.0
+"""The same over the change that others may have [1] (own choice: a short average scatters by some per cent)."""
 
 IDLE_SHARE = 20.0
 """How much further the regulator may move, on which the loop hardly depends [1] (own choice)."""
 
 ESR_FELT, LOSS_FELT, DROP_FELT = 4e-3, 4e-3, 2e-3
-"""What counts like a kelvin: change of the ESR [1], of the recovery loss over all losses [1], of the saturation
-voltage [V] (own choice)."""
+"""What counts like a kelvin: change of the ESR [1], of the recovery loss over all losses [1], of the
+saturation voltage [V] (own choice)."""
 
 _COPPER_STEPS = 12
 
@@ -219,7 +223,8 @@ def balance(
     losses["choke_copper_ac"] = copper_ac_loss(loop, resistance, factor)
     junction_c, leakage, runaway = junctions(loop, device_heat(losses), data, ways.heat, ambient_c)
     losses["rectifier_leakage"] = leakage
-    losses["transistor_leakage"] = transistor_leakage_loss(loop, rows, data, junction_c[:, TRANSISTOR], ambient_c)
+    transistor_c = junction_c[:, TRANSISTOR]
+    losses["transistor_leakage"] = transistor_leakage_loss(loop, rows, data, transistor_c, ambient_c)
     return Balance(losses=losses, junction_c=junction_c, choke_c=hot_choke, runaway=runaway)
 
 
@@ -296,10 +301,8 @@ def junctions(
         Junctions [degC], shape (n, 3), NaN where not known or without balance; leakage loss [W], in runaway
         the largest that could still be carried off; where the leakage finds no balance.
     """
-    on_sink = np.sum(np.where(heat.is_shared, power, 0.0), axis=1)
-    junction = ambient_c[:, None] + heat.own * power + heat.is_shared * (heat.sink * on_sink)[:, None]
+    junction, path = _without_leakage(power, heat, ambient_c)
     base = junction[:, RECTIFIER]
-    path = heat.own[:, RECTIFIER] + np.where(heat.is_shared[:, RECTIFIER], heat.sink, 0.0)
     known = np.isfinite(base) & np.isfinite(path)
     start = np.where(known, np.minimum(base, LEAKAGE_CEILING_C), ambient_c)
     at_start = rectifier_leakage_loss(loop, data, start)
@@ -318,6 +321,50 @@ def junctions(
     junction += np.where(others, (heat.sink * leakage)[:, None], 0.0)
     lost = runaway[:, None] & (others | (np.arange(len(DEVICES)) == RECTIFIER))
     return np.where(lost, np.nan, junction), leakage, runaway
+
+
+def _without_leakage(power: Floats, heat: HeatData, ambient_c: Floats) -> tuple[Floats, Floats]:
+    """Junctions but for the leakage's heat [degC], shape (n, 3), and the rectifier's way to ambient [K/W]."""
+    on_sink = np.sum(np.where(heat.is_shared, power, 0.0), axis=1)
+    junction = ambient_c[:, None] + heat.own * power + heat.is_shared * (heat.sink * on_sink)[:, None]
+    path = heat.own[:, RECTIFIER] + np.where(heat.is_shared[:, RECTIFIER], heat.sink, 0.0)
+    return junction, path
+
+
+def runaway_reach(
+    loop: SteadyStates, power: Floats, data: LossData, heat: HeatData, ambient_c: Floats
+) -> tuple[Floats, Floats]:
+    """How far the rectifier is from thermal runaway.
+
+    Parameters
+    ----------
+    loop : SteadyStates
+        Steady states of n points.
+    power : NDArray
+        Heat in each device but for the leakage, see `device_heat` [W], shape (n, 3).
+    data, heat : LossData, HeatData
+        Of the same points.
+    ambient_c : NDArray
+        [degC], shape (n,).
+
+    Returns
+    -------
+    tuple of NDArray
+        How many times the leakage may grow at the junction's temperature, 1 at the limit and below it in
+        runaway
+        [1]; ambient at which runaway begins with these losses [degC]. Shape (n,); NaN where there is no
+        leakage or no way for the heat is known.
+    """
+    junction, path = _without_leakage(power, heat, ambient_c)
+    base = junction[:, RECTIFIER]
+    at_base = rectifier_leakage_loss(loop, data, np.where(np.isfinite(base), base, ambient_c))
+    known = np.isfinite(base) & np.isfinite(path) & (at_base > 0.0) & (path > 0.0)
+    path, at_base = np.where(known, path, 1.0), np.where(known, at_base, 1e-9)
+    hot = np.asarray(junction_with_leakage(base, path, at_base, data.leakage_coefficient))
+    at_hot = np.where(np.isnan(hot), np.e * at_base, (hot - base) / path)
+    margin = runaway_margin(np.maximum(at_hot, 1e-12), data.leakage_coefficient, path)
+    room = runaway_room(at_base, data.leakage_coefficient, path)
+    return np.where(known, margin, np.nan), np.where(known, ambient_c + room, np.nan)
 
 
 class Run(Protocol):
@@ -391,7 +438,8 @@ def settle_temperatures(
         change = np.column_stack([found.junction_c, found.choke_c]) - steps.at[which]
         change = np.where(np.isfinite(change), change, 0.0)
         irregular = part.column("period_cycles") < 0.0
-        enough = np.where(irregular, np.maximum(SETTLED_IRREGULAR, precision), precision)
+        restless = irregular | (part.column("period_cycles") > 1.0)
+        enough = np.where(restless, np.maximum(SETTLED_IRREGULAR, RESTLESS * precision), precision)
         there = steps.at[which]
         then = parameters_at(rows[which], some.hot, there[:, :-1], there[:, -1], ambient_c[which], part)
         moves = np.maximum(_felt(there, change), _felt_by_rows(now[which], then, part, found)) > enough
@@ -420,13 +468,17 @@ def _felt(at: Floats, change: Floats) -> Floats:
 
 
 def _felt_by_rows(now: Floats, then: Floats, loop: SteadyStates, found: Balance) -> Floats:
-    """Change of what follows the loop rather than a temperature, as a change of temperature [K], shape (n,)."""
+    """Change of what follows the loop rather than a temperature, as a change of temperature [K], shape (n,).
+
+    The rate of loops that do not repeat each cycle differs from run to run, and so does the ESR.
+    """
     esr, charge, drop = COLUMN["esr"], COLUMN["recovery_charge"], COLUMN["saturation_voltage"]
     total = np.maximum(sum(found.losses.values(), np.zeros(len(now))), 1e-3)
+    regular = loop.column("period_cycles") == 1.0
     swept = np.abs(then[:, charge] - now[:, charge]) * now[:, COLUMN["supply_voltage"]]
     return np.maximum.reduce(
         [
-            np.abs(then[:, esr] / np.maximum(now[:, esr], 1e-9) - 1.0) / ESR_FELT,
+            np.where(regular, np.abs(then[:, esr] / np.maximum(now[:, esr], 1e-9) - 1.0), 0.0) / ESR_FELT,
             swept * loop.column("frequency_hz") / total / LOSS_FELT,
             np.abs(then[:, drop] - now[:, drop]) / DROP_FELT,
         ]

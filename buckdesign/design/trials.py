@@ -8,17 +8,20 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, fields, replace
+from enum import Enum
 
 import numpy as np
 from numpy.typing import NDArray
 
 from buckdesign.design.choices import Choice
 from buckdesign.design.elements import RectifierElement, RegulatorElement, TransistorElement
+from buckdesign.design.hot_parameters import WET_KINDS
 from buckdesign.design.requirement import Requirement
 from buckdesign.design.requirement_checks import CHARGE_TIME_TOP
 from buckdesign.design.sizing import DRIVE_MARGIN, LEAST_DRIVE_RESISTANCE, PEAK_OVER_MEAN, upper_resistor
 from buckdesign.loop.parameters import COLUMN, COLUMNS
 from buckdesign.parts import Capacitor
+from buckdesign.physics.capacitor import esr_at_frequency, esr_factor_at_temperature
 from buckdesign.physics.pnp import (
     base_current,
     base_emitter_voltage,
@@ -38,6 +41,15 @@ BIAS_EXPONENT = 1.5
 
 COPPER_SHARE = 0.015
 """Copper loss of a choke over output power [1] (common practice)."""
+
+HOTTEST_C = 140.0
+"""Hottest junction that the search reckons with [degC] (own choice)."""
+
+OWN_RISE = 2.0
+"""Rise of a lightly loaded electrolytic [K] (own choice)."""
+
+USUAL_FREQUENCY = 12e3
+"""Rate of the circuit where the requirement has no band [Hz] (typical of the circuit)."""
 
 WARM_RISE = 40.0
 """Junction of the working transistor above the highest ambient [K] (common practice)."""
@@ -131,6 +143,37 @@ def grid(
     )
 
 
+class Climate(Enum):
+    """Where in the range of ambients a candidate is simulated."""
+
+    HOT = "hot"
+    COLD = "cold"
+
+
+def working_esr(capacitor: Capacitor, ambient_c: float) -> float:
+    """Series resistance of a capacitor in the circuit.
+
+    Parameters
+    ----------
+    capacitor : Capacitor
+        Row of the table.
+    ambient_c : float
+        [degC].
+
+    Returns
+    -------
+    float
+        At the usual rate of the circuit and the capacitor's temperature [ohm].
+    """
+    esr = capacitor.esr
+    if capacitor.loss_tangent is not None:
+        esr = float(esr_at_frequency(esr, capacitor.loss_tangent, capacitor.capacitance, USUAL_FREQUENCY))
+    if capacitor.kind not in WET_KINDS:
+        return esr
+    low, high = esr_factor_at_temperature(ambient_c + OWN_RISE)
+    return esr * float(np.sqrt(low * high))
+
+
 class Bench:
     """Turns trials of one requirement and drawer into parameter rows.
 
@@ -146,8 +189,12 @@ class Bench:
         self.requirement = requirement
         self.drawer = drawer
         self.r1 = upper_resistor(requirement, drawer.regulator.element)
-        warm_c = min(requirement.limits.ambient_high + WARM_RISE, 140.0)
-        self._transistors = [_warm(one.element, warm_c) for one in drawer.transistors]
+        low, high = requirement.limits.ambient
+        self._ambient_c = {Climate.HOT: high, Climate.COLD: low}
+        self._transistors = {
+            climate: [_warm(one.element, min(ambient_c + WARM_RISE, HOTTEST_C)) for one in drawer.transistors]
+            for climate, ambient_c in self._ambient_c.items()
+        }
 
     def lower_resistors(self, trials: Trials) -> Floats:
         """Divider to ground, not rounded [ohm], with the pull of a directly coupled feedback resistor."""
@@ -160,9 +207,9 @@ class Bench:
     def drive_resistors(self, trials: Trials) -> Floats:
         """Drive resistor, not rounded [ohm]; below the smallest useful one where headroom is too small."""
         regulator, requirement = self.drawer.regulator.element, self.requirement
-        gain_min = self._column("gain_min", trials.transistor, cold=True)
-        knee = self._column("gain_knee", trials.transistor, cold=True)
-        emitter = self._column("base_emitter_max", trials.transistor, cold=True)
+        gain_min = self._column("gain_min", trials.transistor)
+        knee = self._column("gain_knee", trials.transistor)
+        emitter = self._column("base_emitter_max", trials.transistor)
         peak = PEAK_OVER_MEAN * requirement.output.current_max
         needed = np.asarray(base_current(peak, gain_min, knee)) + emitter / trials.rbe
         lowest = requirement.supply.voltage_low - requirement.supply.ripple / 2
@@ -195,9 +242,9 @@ class Bench:
     def _start_terms(self, trials: Trials) -> tuple[Floats, Floats, Floats]:
         regulator = self.drawer.regulator.element
         load = self.requirement.output.current_max
-        gain = self._column("gain_min", trials.transistor, cold=True)
-        knee = self._column("gain_knee", trials.transistor, cold=True)
-        tau = np.maximum(self._column("charge_time", trials.transistor, cold=True), CHARGE_TIME_TOP)
+        gain = self._column("gain_min", trials.transistor)
+        knee = self._column("gain_knee", trials.transistor)
+        tau = np.maximum(self._column("charge_time", trials.transistor), CHARGE_TIME_TOP)
         conductance = 1.0 / self.r1 + 1.0 / self.lower_resistors(trials) + 1.0 / trials.rh
         k = 1.0 - 1.0 / (self.r1 * conductance)
         esr = np.array([one.esr for one in self.drawer.capacitors])[trials.capacitor]
@@ -205,10 +252,10 @@ class Bench:
         lag = inductance + tau * (regulator.output_resistance + k * esr)
         return gain / (1.0 + 2.0 * load / knee), lag, conductance
 
-    def rows(self, trials: Trials, supply: float, load: float) -> Floats:
+    def rows(self, trials: Trials, supply: float, load: float, climate: Climate = Climate.HOT) -> Floats:
         """Parameter rows at one operating point, shape (n, columns)."""
         rows = np.empty((len(trials), len(COLUMNS)))
-        values = self._regulator_values() | self._part_values(trials) | self._choke_values(trials)
+        values = self._regulator_values() | self._part_values(trials, climate) | self._choke_values(trials)
         values |= {
             "supply_voltage": supply,
             "load_current": load,
@@ -234,11 +281,11 @@ class Bench:
         )  # fmt: skip
         return {name: getattr(regulator, name) for name in names}
 
-    def _part_values(self, trials: Trials) -> dict[str, Floats]:
+    def _part_values(self, trials: Trials, climate: Climate) -> dict[str, Floats]:
         names = (
             "base_emitter", "charge_time", "gain", "gain_knee", "saturation_voltage", "saturation_resistance",
         )  # fmt: skip
-        values = {name: self._column(name, trials.transistor) for name in names}
+        values = {name: self._column(name, trials.transistor, climate) for name in names}
         diodes = [one.element for one in self.drawer.rectifiers]
         values["threshold"] = np.array([one.threshold for one in diodes])[trials.rectifier]
         values["slope"] = np.array([one.slope / one.parallel for one in diodes])[trials.rectifier]
@@ -247,7 +294,10 @@ class Bench:
         values["capacitance"] = np.array([one.capacitance for one in self.drawer.capacitors])[
             trials.capacitor
         ]
-        values["esr"] = np.array([one.esr for one in self.drawer.capacitors])[trials.capacitor]
+        ambient_c = self._ambient_c[climate]
+        values["esr"] = np.array([working_esr(one, ambient_c) for one in self.drawer.capacitors])[
+            trials.capacitor
+        ]
         return values
 
     def _choke_values(self, trials: Trials) -> dict[str, Floats | float]:
@@ -260,8 +310,10 @@ class Bench:
             "choke_resistance": COPPER_SHARE * output.voltage / output.current_max,
         }
 
-    def _column(self, name: str, index: Indices, *, cold: bool = False) -> Floats:
-        source = [one.element for one in self.drawer.transistors] if cold else self._transistors
+    def _column(self, name: str, index: Indices, climate: Climate | None = None) -> Floats:
+        """A value of the transistors at a climate's junction temperature, or at 25 degC."""
+        tabled = [one.element for one in self.drawer.transistors]
+        source = tabled if climate is None else self._transistors[climate]
         return np.array([getattr(one, name) for one in source])[index]
 
 

@@ -1,7 +1,8 @@
 """Integrals over the steps of the loop: charges, energies, extremes and times.
 
-Each step is integrated by Gauss-Legendre quadrature on its Taylor polynomials (four nodes, exact to
-degree 7: what the products hold above that falls below 1e-9 within the length of a step), so that the accounts are as exact as the trajectory.
+Each step is integrated by Gauss-Legendre quadrature on its Taylor polynomials (four nodes, exact to degree 7: what
+the products hold above that falls below 1e-7 within the length of a step), so that the accounts are about as exact
+as the trajectory.
 """
 
 from __future__ import annotations
@@ -52,7 +53,7 @@ from .constants import (
     Array,
     Discrete,
 )  # fmt: skip
-from .step import value
+from .crossing import value
 from .taylor import load_line
 
 (

@@ -51,7 +51,8 @@ def cache_folder() -> Path:
         if not os.access(folder, os.W_OK):
             raise OSError
     except OSError:
-        folder = Path(tempfile.gettempdir()) / f"buckdesign-{os.getuid() if hasattr(os, 'getuid') else 0}" / folder.name
+        user = os.getuid() if hasattr(os, "getuid") else 0
+        folder = Path(tempfile.gettempdir()) / f"buckdesign-{user}" / folder.name
         folder.mkdir(parents=True, exist_ok=True)
     return folder
 
@@ -63,22 +64,22 @@ def is_cached() -> bool:
 
 def compiled(function: Function) -> Function:
     """Compile a function of the kernel on its first call and keep the result in `cache_folder`."""
-    kept = numba.config.CACHE_DIR
-    numba.config.CACHE_DIR = str(cache_folder())
+    settings: Any = numba.config
+    kept = settings.CACHE_DIR
+    settings.CACHE_DIR = str(cache_folder())
+    compiler: Any = njit(cache=True, nogil=True, error_model="numpy", fastmath={"contract", "reassoc", "nsz", "arcp"})
     try:
-        return njit(
-            cache=True, nogil=True, error_model="numpy", fastmath={"contract", "reassoc", "nsz", "arcp"}
-        )(function)
+        made: Function = compiler(function)
     finally:
-        numba.config.CACHE_DIR = kept
+        settings.CACHE_DIR = kept
+    return made
 
 
-@intrinsic
-def lent(typing_context: Any, array: Any) -> Any:
+def _lend(typing_context: Any, array: Any) -> Any:
     """The same array without a share in its ownership, for use while its owner is held elsewhere.
 
-    Calls between compiled functions count references to the arrays that they pass, with an atomic operation each;
-    in the innermost loop that would cost a third of the time.
+    Calls between compiled functions count the references to the arrays that they pass, with an atomic
+    operation each; in the innermost loop that would cost a third of the time.
     """
 
     def generate(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
@@ -87,3 +88,6 @@ def lent(typing_context: Any, array: Any) -> Any:
         return made._getvalue()
 
     return array(array), generate
+
+
+lent: Any = intrinsic(_lend)

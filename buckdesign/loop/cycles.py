@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from .accounting import A_COMMUTATIONS, A_CYCLES, A_PERIOD, A_PERIOD2, A_TIME, account
+from .changes import available, change, charge, move, turn_on
 from .compiling import compiled
 from .constants import (
     ACTIVE,
@@ -49,19 +50,7 @@ from .constants import (
     Array,
     Discrete,
 )  # fmt: skip
-from .step import (
-    BASE_ON,
-    CHARGE_ENOUGH,
-    NODE_FALLS,
-    NONE,
-    advance,
-    available,
-    change,
-    charge,
-    move,
-    ruling_bound,
-    turn_on,
-)
+from .step import BASE_ON, CHARGE_ENOUGH, NODE_FALLS, NONE, advance, ruling_bound
 from .taylor import expand
 
 BEGAN, RESTS, SPENT, TIME_UP = 0, 1, 2, 3
@@ -229,9 +218,7 @@ def rest_point(c: Array, x: Array, m: Discrete, s: Array, target: Array) -> floa
 
 
 @compiled
-def run_cycle(
-    c: Array, x: Array, m: Discrete, s: Array, g: Array, limits: Array, a: Array, accounts: bool
-) -> int:
+def run_cycle(c: Array, x: Array, m: Discrete, s: Array, g: Array, limits: Array, a: Array, accounts: bool) -> int:
     """Run until a cycle begins, a rest point is reached or a limit is met.
 
     ``limits`` holds the largest number of steps and the largest time [s] since the last cycle began;

@@ -49,7 +49,7 @@ def static_current(row: Array, c: Array) -> float:
 
 @compiled
 def _unstable(c: Array, current: float, gain: float, inductance: float, share: float) -> bool:
-    """Whether the active-mode Jacobian with the feedback reduced to ``share`` has an eigenvalue in the right half plane.
+    """Whether the active-mode Jacobian with feedback reduced to ``share`` has an eigenvalue of positive real part.
 
     States scaled: i_L, v_C, i_R, v_H; characteristic polynomial by Faddeev-LeVerrier, Hurwitz test.
     """

@@ -66,7 +66,15 @@ def _apart(z: Array, y: Array) -> float:
 
 @compiled
 def return_map(
-    c: Array, z: Array, began: int, held: Discrete, repeats: int, s: Array, limits: Array, y: Array, end: Discrete
+    c: Array,
+    z: Array,
+    began: int,
+    held: Discrete,
+    repeats: int,
+    s: Array,
+    limits: Array,
+    y: Array,
+    end: Discrete,
 ) -> int:
     """Image of the section point ``z`` after ``repeats`` cycles in ``y``; its discrete state in ``end``.
 
@@ -253,9 +261,7 @@ def close_orbit(
 
 
 @compiled
-def average(
-    c: Array, x: Array, m: Discrete, s: Array, cycles: int, limits: Array, a: Array, g: Array
-) -> int:
+def average(c: Array, x: Array, m: Discrete, s: Array, cycles: int, limits: Array, a: Array, g: Array) -> int:
     """Account ``cycles`` cycles from a cycle's beginning; returns how many were finished."""
     clear(a)
     for k in range(cycles):

@@ -16,12 +16,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from .accounting import A_TIME, ACCOUNTS
+from .changes import classify
 from .constants import CONSTANTS, DISCRETES, MODE_NAMES, ORDER, ROWS, STATES, derive
 from .parameters import COLUMNS, LoopParameters
 from .sampling import SAMPLES, cycle_starts, record
 from .sampling import WIDTH as SAMPLE_WIDTH
 from .steady import OUTPUT, OUTPUTS, REGIMES, WIDTH, _residual, operating_start, solve_rows
-from .step import classify
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -73,7 +73,13 @@ class Effort:
         """The settings in the order that the kernel reads them, shape (8,)."""
         return np.array(
             [
-                self.plain, self.accelerated, self.more, self.window, self.steps, self.span, self.patience,
+                self.plain,
+                self.accelerated,
+                self.more,
+                self.window,
+                self.steps,
+                self.span,
+                self.patience,
                 self.tolerance,
             ],
             np.float64,

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 
 from .accounting import account, clear
+from .changes import available, change, move
 from .compiling import compiled
 from .constants import (
     ACTIVE,
@@ -28,8 +29,9 @@ from .constants import (
     Array,
     Discrete,
 )  # fmt: skip
+from .crossing import value
 from .cycles import count_period, nudge
-from .step import NONE, advance, available, change, move, value
+from .step import NONE, advance
 
 # columns of a recording
 SAMPLES = (
@@ -71,9 +73,17 @@ def sample(c: Array, m: Discrete, s: Array, t: float, decay: float, at: float, r
 
 @compiled
 def record(
-    c: Array, x: Array, m: Discrete, s: Array, cycles: int, span: float, per_step: int, spacing: float, rows: Array
+    c: Array,
+    x: Array,
+    m: Discrete,
+    s: Array,
+    cycles: int,
+    span: float,
+    per_step: int,
+    spacing: float,
+    rows: Array,
 ) -> tuple[int, float, int]:
-    """Run ``cycles`` cycles or ``span`` seconds and sample each step at ``per_step`` + 1 points, closer than ``spacing``.
+    """Run ``cycles`` cycles or ``span`` seconds; sample each step at ``per_step`` + 1 points, closer than ``spacing``.
 
     Returns the number of rows filled, the time run [s] and the cycles begun.
     """

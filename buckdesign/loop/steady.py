@@ -57,6 +57,7 @@ from .accounting import (
     flux_linkage,
     stored_energy,
 )  # fmt: skip
+from .changes import classify
 from .compiling import compiled, lent
 from .constants import (
     CONSTANTS,
@@ -93,7 +94,6 @@ from .orbit import (
     average,
     settle,
 )
-from .step import classify
 
 LINEAR, STUCK, DROPOUT, OVERLOAD, CONTINUOUS, DISCONTINUOUS = range(6)
 REGIMES = ("linear", "stuck", "dropout", "overload", "continuous", "discontinuous")

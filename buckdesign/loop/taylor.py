@@ -240,7 +240,14 @@ def _passive_orders(c: Array, m: Discrete, s: Array, order: int) -> None:
     c_l, c_c, c_r, c_h, c_a, c_1 = s[row, 6], s[row, 7], s[row, 8], s[row, 9], s[row, 10], s[row, 11]
     r_l, r_c = s[row, 12], s[row, 13]
     r_r, r_h, r_a, r_1 = s[row + 1, 0], s[row + 1, 1], s[row + 1, 2], s[row + 1, 3]
-    h_l, h_c, h_r, h_h, h_a, h_1 = s[row + 1, 4], s[row + 1, 5], s[row + 1, 6], s[row + 1, 7], s[row + 1, 8], s[row + 1, 9]
+    h_l, h_c, h_r, h_h, h_a, h_1 = (
+        s[row + 1, 4],
+        s[row + 1, 5],
+        s[row + 1, 6],
+        s[row + 1, 7],
+        s[row + 1, 8],
+        s[row + 1, 9],
+    )
     tau = c[K_TAU_INV]
     il, vc, ir, q, vh, iav = s[S_IL, 0], s[S_VC, 0], s[S_IR, 0], s[S_Q, 0], s[S_VH, 0], 0.0
     if not free:
@@ -312,8 +319,22 @@ def _outputs(s: Array, row: int, order: int, free: bool, needs_iav: bool) -> Non
     """Orders of output voltage, switch node and error from those of the states."""
     o_l, o_c, o_r, o_h = s[row + 1, 10], s[row + 1, 11], s[row + 1, 12], s[row + 1, 13]
     o_a, o_1 = s[row + 2, 0], s[row + 2, 1]
-    n_l, n_c, n_r, n_h, n_a, n_1 = s[row + 2, 2], s[row + 2, 3], s[row + 2, 4], s[row + 2, 5], s[row + 2, 6], s[row + 2, 7]
-    e_l, e_c, e_r, e_h, e_a, e_1 = s[row + 2, 8], s[row + 2, 9], s[row + 2, 10], s[row + 2, 11], s[row + 2, 12], s[row + 2, 13]
+    n_l, n_c, n_r, n_h, n_a, n_1 = (
+        s[row + 2, 2],
+        s[row + 2, 3],
+        s[row + 2, 4],
+        s[row + 2, 5],
+        s[row + 2, 6],
+        s[row + 2, 7],
+    )
+    e_l, e_c, e_r, e_h, e_a, e_1 = (
+        s[row + 2, 8],
+        s[row + 2, 9],
+        s[row + 2, 10],
+        s[row + 2, 11],
+        s[row + 2, 12],
+        s[row + 2, 13],
+    )
     if not free:
         # the relations of a held current hold it already
         o_r, n_r, e_r = 0.0, 0.0, 0.0

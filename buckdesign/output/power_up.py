@@ -54,8 +54,8 @@ def power_up_text(result: DesignResult) -> str:
         f"{_shown(half.frequency_hz, 'Hz')} at the switch node, {_shown(half.ripple_v, 'V')} ripple at the "
         "output.",
         f"Full load, {_amperes(need.output.current_max)}: about {_shown(nominal.frequency_hz, 'Hz')}, "
-        f"{_shown(nominal.ripple_v, 'V')} ripple, {_amperes(nominal.input_current_a['mean'])} drawn. The "
-        "regulator's own lag is known within a factor of three only: anything from "
+        f"{_shown(nominal.ripple_v, 'V')} ripple, {_amperes(nominal.input_current_a['mean'])} drawn. Cold "
+        "capacitors and the regulator's own lag, known within a factor of three only, move it: anything from "
         f"{_shown(slow, 'Hz')} to {_shown(fast, 'Hz')} is as designed.",
         "Watch the heat for the first minutes: a transistor that gets hot fast without oscillation is stuck "
         "in its active region; switch off.",

@@ -4,9 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
+from buckdesign.design.capacitor_load import CapacitorLoad
 from buckdesign.design.losses import LOSSES
 from buckdesign.design.operating_point import Check, OperatingPoint, Transient
+from buckdesign.output.heat_text import heat_sink_text, linear_text
 from buckdesign.output.text import Column, text_pairs, text_table
+from buckdesign.physics.capacitor import HOURS_PER_YEAR
 from buckdesign.units import format_quantity
 
 BAR_WIDTH = 24
@@ -42,6 +45,10 @@ def simulation_text(point: OperatingPoint) -> str:
         Several blocks with headings, a blank line between them.
     """
     blocks = [heading(point), _electrical(point), _losses(point)]
+    if point.linear is not None:
+        blocks[-1] += f"\n{linear_text(point.linear)}"
+    if point.heat_sinks is not None:
+        blocks.append(heat_sink_text(point.heat_sinks))
     if point.transient is not None:
         blocks.append(_transient(point.transient))
     blocks.append(checks_text(point.checks))
@@ -131,7 +138,23 @@ def _oscillation(point: OperatingPoint) -> str:
 
 def _capacitors(point: OperatingPoint) -> str:
     currents = point.capacitor_current_a
+    if point.capacitors is not None:
+        loads = [(side, one) for side, one in point.capacitors.items() if one is not None]
+        return "\n".join(f"{side} {_capacitor(one)}" for side, one in loads)
     return ", ".join(f"{side} {_shown(value, 'A')}" for side, value in currents.items() if value is not None)
+
+
+def _capacitor(load: CapacitorLoad) -> str:
+    parts = [f"{_shown(load.ripple_a, 'A')}"]
+    if load.rated_a is not None:
+        parts[0] += f" of {_shown(load.rated_a, 'A')} rated"
+    parts.append(f"ESR {_shown(load.esr_ohm, 'ohm')}")
+    if load.temperature_c is not None:
+        parts.append(_shown(load.temperature_c, "degC"))
+    if load.life_h is not None:
+        years = load.life_h / HOURS_PER_YEAR
+        parts.append(f"life {years:.0f} years" if years >= 2.0 else f"life {load.life_h:.0f} h")
+    return ", ".join(parts)
 
 
 def _junctions(point: OperatingPoint) -> str:

@@ -157,12 +157,12 @@ def _testing(choke: WoundChoke) -> list[tuple[str, str]]:
 def _working(choke: WoundChoke) -> list[tuple[str, str]]:
     work, pairs = choke.work, []
     if work.current is None:
-        return [("duty", "not given")]
+        return [("carries", "not given")]
     duty = format_quantity(work.current, "A")
     if work.ripple is not None and work.frequency is not None:
         duty += f", ripple {format_quantity(work.ripple, 'A')} peak to peak at "
         duty += format_quantity(work.frequency, "Hz")
-    pairs.append(("duty", f"{duty}, air at {work.ambient_c:.0f} \u00b0C"))
+    pairs.append(("carries", f"{duty}, air at {work.ambient_c:.0f} \u00b0C"))
     losses = [
         f"{name} {format_quantity(loss, 'W')}"
         for name, loss in (("copper", choke.copper_loss_w), ("core", choke.core_loss_w))

@@ -125,8 +125,10 @@ def esr_at_frequency(esr: Real, loss_factor: Real, capacitance: Real, frequency:
 
     Examples
     --------
-    >>> round(float(esr_at_frequency(0.06, 0.14, 470e-6, 120.0)), 4), round(float(esr_at_frequency(0.06, 0.14, 470e-6, 20e3)), 4)
-    (0.3951, 0.0616)
+    >>> round(float(esr_at_frequency(0.06, 0.14, 470e-6, 120.0)), 4)
+    0.3951
+    >>> round(float(esr_at_frequency(0.06, 0.14, 470e-6, 20e3)), 4)
+    0.0616
     """
     low = esr_from_loss_factor(loss_factor, capacitance, LOSS_FACTOR_FREQUENCY)
     oxide = np.maximum(low - esr, 0.0) / (1.0 / LOSS_FACTOR_FREQUENCY - 1.0 / ESR_FREQUENCY)

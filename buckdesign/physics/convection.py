@@ -18,6 +18,12 @@ RANGES: Ranges = {
 }
 """Ranges given with the correlations (from memory)."""
 
+PLATE_UNCERTAINTY = 0.2
+"""Relative uncertainty of the resistance of a plate [1] (from memory: scatter about simple correlations)."""
+
+BRIGHT_EMISSIVITY = 0.08
+"""Emissivity of bright aluminium [1]; 0.04-0.1 (from memory)."""
+
 ENAMEL_EMISSIVITY = 0.9
 """Emissivity of enamelled copper, painted cores and anodised sinks (from memory)."""
 
@@ -280,6 +286,44 @@ def plate_resistance(area: Real, height: Real, rise: Real, ambient_c: Real, emis
     """
     radiation = radiation_coefficient(ambient_c + rise, ambient_c, emissivity)
     return 1.0 / (area * (plate_convection(rise, height) + radiation))
+
+
+def plate_side(resistance: Real, rise: Real, ambient_c: Real, emissivity: Real) -> Real:
+    """Side of a square vertical plate, free on both sides, that has a thermal resistance at a given rise.
+
+    Parameters
+    ----------
+    resistance : float or ndarray
+        Thermal resistance to the air, above zero [K/W].
+    rise : float or ndarray
+        Surface over ambient temperature, above zero [K].
+    ambient_c : float or ndarray
+        Ambient temperature [degC].
+    emissivity : float or ndarray
+        Emissivity; 0 leaves convection alone [1].
+
+    Returns
+    -------
+    float or ndarray
+        Side [m]; `PLATE_UNCERTAINTY` says how good that is.
+
+    Notes
+    -----
+    Derived from `plate_resistance` by a fixed number of halvings; heat spreads well in a plate of
+    aluminium of 2-3 mm up to about 0.15 m (from memory), beyond that it takes more.
+
+    Examples
+    --------
+    >>> round(float(plate_side(3.66447, 50.0, 25.0, 0.9)), 5)
+    0.1
+    """
+    low, high = np.log(1e-4), np.log(1e2)
+    for _ in range(50):
+        middle = 0.5 * (low + high)
+        side = np.exp(middle)
+        found = plate_resistance(2.0 * side * side, side, rise, ambient_c, emissivity)
+        low, high = np.where(found > resistance, middle, low), np.where(found > resistance, high, middle)
+    return plain(np.exp(0.5 * (low + high)))
 
 
 def ring_heat_flow(

@@ -283,14 +283,14 @@ def hottest_piece(
     coefficient : float or ndarray
         Change of the forward drop with temperature [V/K].
     path : float or ndarray
-        Thermal resistance of one piece that the others do not share: junction to sink on a common sink, junction
-        to ambient where each is cooled by itself [K/W].
+        Thermal resistance of one piece that the others do not share: junction to sink on a common sink,
+        junction to ambient where each is cooled by itself [K/W].
 
     Returns
     -------
     tuple of float or ndarray
-        Current of the piece [A], and how much warmer it is than the others [K]. With a negative coefficient the
-        hotter piece draws more; where nothing stops that it carries all of the current.
+        Current of the piece [A], and how much warmer it is than the others [K]. With a negative
+        coefficient the hotter piece draws more; where nothing stops that it carries all of the current.
 
     Notes
     -----

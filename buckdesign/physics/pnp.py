@@ -39,8 +39,8 @@ REVERSE_GAIN = 4.0
 """Inverse current gain of a power transistor [1]; 2-10 in use (from memory)."""
 
 LARGEST_FORCED_SHARE = 0.98
-"""Forced over available gain up to which the saturation voltage is followed [1] (own choice: it grows without bound
-at 1, where the transistor leaves saturation)."""
+"""Forced over available gain up to which the saturation voltage is followed [1] (own choice: it grows
+without bound at 1, where the transistor leaves saturation)."""
 
 CHARGE_TIME_DEFAULT = 1.5e-6
 """Charge lifetime of a slow power PNP where nothing is known [s] (common practice, no source)."""
@@ -400,7 +400,8 @@ def charge_time_at_temperature(charge_time_25c: Real, temperature_c: Real) -> Re
 def saturation_with_drive(
     forced_gain: Real, gain: Real, temperature_c: Real, reverse_gain: Real = REVERSE_GAIN
 ) -> Real:
-    """Saturation voltage of the junctions as it depends on the base drive, without the collector's resistance.
+    """Saturation voltage of the junctions as it depends on the base drive, without the collector's
+    resistance.
 
     Parameters
     ----------

@@ -12,8 +12,8 @@ RANGES: Ranges = {"recovery_peak_current": {"softness": (0.1, 3.0)}}
 
 
 CHARGE_DOUBLING = 100.0
-"""Rise of temperature that doubles the recovery charge of a PN rectifier [K]; about twice from 25 to 125 degC (from
-memory)."""
+"""Rise of temperature that doubles the recovery charge of a PN rectifier [K]; about twice from 25 to 125
+degC (from memory)."""
 
 TEST_SLOPE = 50e6
 """Slope of the usual test of the recovery time [A/s] (data sheets of fast rectifiers)."""
@@ -186,8 +186,8 @@ def charge_at_crossing(current: Real, current_slope: Real, lifetime: Real) -> Re
 
     Notes
     -----
-    Derived: charge control, ``dq/dt = i - q/t`` with ``i = I - a time`` from ``q = I t``. Form of the model after
-    P. O. Lauritzen and C. L. Ma, IEEE Trans. Power Electronics 6 (1991) 188 (from memory).
+    Derived: charge control, ``dq/dt = i - q/t`` with ``i = I - a time`` from ``q = I t``. Form of the
+    model after P. O. Lauritzen and C. L. Ma, IEEE Trans. Power Electronics 6 (1991) 188 (from memory).
 
     Examples
     --------
@@ -219,8 +219,8 @@ def carrier_lifetime(charge: Real, current: Real, current_slope: Real) -> Real:
 
     Notes
     -----
-    Derived: the charge grows with the lifetime, from its square to proportional to it, and is concave in between on
-    logarithmic scales; a fixed number of halvings of its logarithm.
+    Derived: the charge grows with the lifetime, from its square to proportional to it, and is concave in
+    between on logarithmic scales; a fixed number of halvings of its logarithm.
 
     Examples
     --------

@@ -16,8 +16,8 @@ RANGES: Ranges = {
 memory)."""
 
 THERMAL_SHUTDOWN_C = 165.0
-"""Junction temperature at which the regulator's own protection takes its output current away [degC]; 150-175 by
-class and maker (from memory)."""
+"""Junction temperature at which the regulator's own protection takes its output current away [degC];
+150-175 by class and maker (from memory)."""
 
 DROPOUT_TEMPERATURE_COEFFICIENT = -2e-3
 """Change of the dropout voltage with temperature [V/K] (from memory)."""

@@ -151,3 +151,33 @@ def runaway_margin(leakage_loss: Real, coefficient: Real, thermal_resistance: Re
     loop_gain = np.asarray(leakage_loss * coefficient * thermal_resistance, dtype=float)
     none = loop_gain == 0.0
     return plain(np.where(none, np.inf, 1.0 / np.where(none, 1.0, loop_gain)))
+
+
+def runaway_room(loss_at_base: Real, coefficient: Real, thermal_resistance: Real) -> Real:
+    """Rise of the ambient at which the balance is lost, ``-(1 + ln(c R_th P)) / c``.
+
+    Parameters
+    ----------
+    loss_at_base : float or ndarray
+        Leakage loss at the temperature that all other losses give, above zero [W].
+    coefficient : float or ndarray
+        Exponent of the leakage [1/K].
+    thermal_resistance : float or ndarray
+        Junction to ambient, above zero [K/W].
+
+    Returns
+    -------
+    float or ndarray
+        Rise [K]; negative where there is no balance already.
+
+    Notes
+    -----
+    Derived: the leakage loss follows the ambient as ``exp(c dT)`` while the other losses stay, and balance
+    ends at ``c R_th P = 1/e``, see `junction_with_leakage`.
+
+    Examples
+    --------
+    >>> round(float(runaway_room(0.05, 0.055, 40.0)), 2)
+    21.95
+    """
+    return -(1.0 + np.log(coefficient * thermal_resistance * loss_at_base)) / coefficient

@@ -1,8 +1,9 @@
 """Safe operating area of a bipolar power transistor, and its leakage.
 
-The area is bounded by the rated current, by the power that the junction may have, by second breakdown and by the
-rated voltage. Second breakdown is not a matter of temperature alone: it is known only where a data sheet gives it,
-and where it is not known the answer is NaN, never an estimate.
+The area is bounded by the rated current, by the power that the junction may have, by second breakdown and
+by the
+rated voltage. Second breakdown is not a matter of temperature alone: it is known only where a data sheet
+gives it, and where it is not known the answer is NaN, never an estimate.
 """
 
 from __future__ import annotations
@@ -15,8 +16,8 @@ RANGES: Ranges = {"leakage": {"temperature_c": (25.0, 200.0)}}
 """Where one exponential describes the leakage (from memory)."""
 
 BREAKDOWN_EXPONENT = 2.0
-"""Fall of the second-breakdown current with voltage, ``I V^-n`` [1]; 1.5-2.5 in curves of power transistors (from
-memory)."""
+"""Fall of the second-breakdown current with voltage, ``I V^-n`` [1]; 1.5-2.5 in curves of power
+transistors (from memory)."""
 
 LEAKAGE_COEFFICIENT = 0.0693
 """Exponent of the leakage of silicon, doubling every 10 K [1/K] (common practice, no source)."""
@@ -77,8 +78,8 @@ def safe_current(
 
     Notes
     -----
-    From the point the second-breakdown current falls as ``V^-n``, see `BREAKDOWN_EXPONENT`; below its voltage it
-    rises by the same law. Derived: the smallest of the four limits.
+    From the point the second-breakdown current falls as ``V^-n``, see `BREAKDOWN_EXPONENT`; below its
+    voltage it rises by the same law. Derived: the smallest of the four limits.
 
     Examples
     --------
@@ -119,8 +120,10 @@ def pulse_safe_current(
 
     Examples
     --------
-    >>> float(pulse_safe_current(20.0, 1e-4, 40.0, 3.0, 1e-3)), float(pulse_safe_current(20.0, 1e-2, 40.0, 3.0, 1e-3))
-    (12.0, nan)
+    >>> float(pulse_safe_current(20.0, 1e-4, 40.0, 3.0, 1e-3))
+    12.0
+    >>> float(pulse_safe_current(20.0, 1e-2, 40.0, 3.0, 1e-3))
+    nan
     """
     law = pulse_current * (pulse_voltage / np.maximum(voltage, 1e-9)) ** BREAKDOWN_EXPONENT
     return plain(np.where(np.asarray(duration) <= pulse_duration, law, np.nan))
@@ -149,7 +152,8 @@ def safe_area_margin(current: Real, allowed: Real) -> Real:
     0.25
     """
     known = np.asarray(allowed, dtype=float)
-    return plain(np.where(np.asarray(current) > 0.0, 1.0 - current / np.maximum(known, 1e-12), 1.0 + 0.0 * known))
+    return plain(np.where(np.asarray(current) > 0.0, 1.0 - current / np.maximum(known, 1e-12), 1.0 + 0.0 *
+    known))
 
 
 def leakage(hot_leakage: Real, temperature_c: Real, hot_c: Real) -> Real:
@@ -169,7 +173,8 @@ def leakage(hot_leakage: Real, temperature_c: Real, hot_c: Real) -> Real:
 
     Notes
     -----
-    From the hot limit, which is nearer to its use, with `LEAKAGE_COEFFICIENT` (common practice): an upper estimate.
+    From the hot limit, which is nearer to its use, with `LEAKAGE_COEFFICIENT` (common practice): an upper
+    estimate.
 
     Examples
     --------

@@ -139,7 +139,7 @@ def test_common_practice_of_a_laptop_brick() -> None:
         15.0,
         (0.0, 3.0),
         0.3,
-        prefer={"rectifier": ("1N5811",), "transistor": ("2N5884",)},
+        prefer={"rectifier": ("1N5811",), "transistor": ("2N5876",), "core": ("R 26.9/14.5/11.1",)},
     )
     result = design_supply(need)
     full = [point for point in result.corners if point.load_a == 3.0]
@@ -261,3 +261,12 @@ def test_easing_a_line_moves_it_outward(line: object) -> None:
     moved = eased(one, value, 0.02)
     assert moved > value if one.upward else moved < value
     assert line_value(relaxed(need, one, moved), one) == moved
+
+
+def test_preferred_ferrite_is_refused_with_the_reason() -> None:
+    need = requirement(
+        BATTERY, 12.0, (0.02, 2.5), 0.12, prefer={"material": ("manganese-zinc ferrite 2300",)}
+    )
+    (blocking,) = design_supply(need).blocking
+    assert blocking.key == "prefer.material"
+    assert "saturates" in blocking.text

@@ -68,8 +68,11 @@ def test_losses_sum_to_input_minus_output(everything: Any) -> None:
     loop = everything.loop
     losses = everything.balance.losses
     added = sum(
-        losses[name] for name in ("choke_core", "choke_copper_ac", "input_capacitor", "rectifier_leakage")
-    )
+        losses[name]
+        for name in (
+            "choke_core", "choke_copper_ac", "input_capacitor", "rectifier_leakage", "transistor_leakage"
+        )
+    )  # fmt: skip
     added = added + junction_capacitance_loss(loop, everything.data)
     missing = loop.column("input_w") + added - everything.output_power - everything.total_loss
     relative = np.abs(missing) / np.maximum(loop.column("input_w"), 1e-6)
@@ -168,9 +171,9 @@ def test_input_capacitor_carries_the_alternating_part() -> None:
     loop = made(input_mean_a=1.2, input_rms_a=3.0 * np.sqrt(0.4))
     assert input_ripple_rms(loop)[0] == pytest.approx(3.0 * np.sqrt(0.24), rel=1e-12)
     esr = resolved_bench().input_capacitor.esr
-    assert input_capacitor_loss(loop, data())[0] == pytest.approx(9.0 * 0.24 * esr, rel=1e-12)
+    assert input_capacitor_loss(loop, data().input_esr)[0] == pytest.approx(9.0 * 0.24 * esr, rel=1e-12)
     without = loss_data([replace(resolved_bench(), input_capacitor=None)])
-    assert np.isnan(without.input_esr[0]) and input_capacitor_loss(loop, without)[0] == 0.0
+    assert np.isnan(without.input_esr[0]) and input_capacitor_loss(loop, without.input_esr)[0] == 0.0
 
 
 def test_leakage_grows_by_its_exponent() -> None:

@@ -48,7 +48,12 @@ def circuits() -> list[tuple[LoopParameters, bool]]:
     return [(random_circuits(rng, 1, kind)[0], rest) for kind, rest in CASES]
 
 
-@pytest.mark.parametrize("index", range(len(CASES)), ids=lambda i: f"{i}-{CASES[i][0]}-{'rest' if CASES[i][1] else 'load'}")
+def case_name(index: int) -> str:
+    kind, rest = CASES[index]
+    return f"{index}-{kind}-{'rest' if rest else 'load'}"
+
+
+@pytest.mark.parametrize("index", range(len(CASES)), ids=case_name)
 def test_three_cycles_follow_the_reference(index: int, circuits: list[tuple[LoopParameters, bool]]) -> None:
     """States at the beginnings of the first cycles, from the operating point and from rest, over all regimes."""
     parameters, rest = circuits[index]
@@ -83,7 +88,8 @@ def test_the_orbit_closes_in_the_reference(index: int, circuits: list[tuple[Loop
     names = ("choke_current_a", "capacitor_voltage_v", "regulator_current_a", "base_charge_c", "coupling_voltage_v")
     state = np.array([shape.column(name)[k] for name in names] + [0.0])
     begin = trajectory(parameters, start=list(state[:5]), cycles=period + 1, span=1.0)
-    theirs = circuit.run((begin.states[0].copy(), _mode_at(circuit, parameters, begin.states[0])), 1.0, cycles=period, keep=True)
+    section = begin.states[0]
+    theirs = circuit.run((section.copy(), _mode_at(circuit, section)), 1.0, cycles=period, keep=True)
     assert period / found.column("frequency_hz")[0] == pytest.approx(theirs.cycle_times[-1], rel=1e-5)
     measured = measure(circuit, theirs)
     assert measured.mean_output == pytest.approx(found.column("output_voltage_v")[0], rel=1e-5)
@@ -98,7 +104,7 @@ def test_the_orbit_closes_in_the_reference(index: int, circuits: list[tuple[Loop
     )
 
 
-def _mode_at(circuit: Reference, parameters: LoopParameters, state: np.ndarray) -> object:
+def _mode_at(circuit: Reference, state: np.ndarray) -> object:
     """Mode of the reference at the beginning of a cycle."""
     from tests.loop.reference_model import Clamp, Load, Mode, Piece, Switch
 

@@ -15,7 +15,6 @@ from tests.loop.reference_measures import Settled, settle
 from tests.loop.reference_model import Clamp, Piece, Release, Switch
 
 
-
 def settled(parameters: LoopParameters, release: Release = Release.FOLLOW) -> Settled:
     circuit = Reference(parameters, PRECISE, release)
     return settle(circuit, circuit.operating_start())

@@ -1,0 +1,419 @@
+"""Rectifiers compared in one design: each part, single and in parallel, with the loop run again for each.
+
+The rate is the loop's own and moves with the rectifier; losses and temperatures are settled together.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, fields, replace
+from typing import Any
+
+import numpy as np
+
+from buckdesign.design.checks import Limit, hottest_piece_at, part_limits
+from buckdesign.design.design_file import Design
+from buckdesign.design.elements import ResolvedDesign
+from buckdesign.design.losses import Floats
+from buckdesign.design.operated import Operated, Points, operate_rows, points_of, rows_at
+from buckdesign.design.ratings import rating_data
+from buckdesign.design.resolve import resolve_design
+from buckdesign.design.sections import RectifierSection
+from buckdesign.design.temperatures import device_heat, heat_data, runaway_reach
+from buckdesign.loop.results import STUDY, Effort
+from buckdesign.parts import Rectifier, Tables, load_tables
+from buckdesign.units import format_quantity
+
+AXIAL_FREE_AIR = 50.0
+"""Junction to ambient of an axial rectifier whose sheet gives none [K/W] (from memory: 30-60 for 1-3 A
+bodies on short leads)."""
+
+CURRENT_ROOM = 1.0
+"""Rated average current over the current that a piece carries from which a part is worth a look [1]."""
+
+PIECES = 2
+"""Most pieces in parallel that are tried unless said otherwise [1] (own choice)."""
+
+
+@dataclass(frozen=True, kw_only=True)
+class Variant:
+    """A rectifier to try.
+
+    Attributes
+    ----------
+    part : str or None
+        Name in the table; None: as the design file gives it, without a part.
+    kind : str or None
+        As in the table.
+    parallel : int
+        Pieces.
+    resolved : ResolvedDesign
+        The design with it.
+    is_own : bool
+        Whether it is the design's own.
+    """
+
+    part: str | None
+    kind: str | None
+    parallel: int
+    resolved: ResolvedDesign
+    is_own: bool
+
+    @property
+    def label(self) -> str:
+        """Such as ``2 x 1N5822``."""
+        name = self.part or "as given"
+        return name if self.parallel == 1 else f"{self.parallel} x {name}"
+
+
+@dataclass(frozen=True, kw_only=True)
+class RectifierRow:
+    """One rectifier in the circuit.
+
+    Attributes
+    ----------
+    part, kind : str or None
+        As in the table.
+    parallel : int
+        Pieces.
+    conduction_w, recovery_w, leakage_w, total_w : float
+        Losses that the rectifier causes, in itself and in the transistor [W].
+    junction_c : float or None
+        Of the hottest piece [degC]; None in runaway or where no way for the heat is known.
+    runaway_margin : float or None
+        How many times its leakage may grow [1]; below 1 in runaway, None without leakage.
+    efficiency, frequency_hz : float
+        Of the whole stage [1], [Hz].
+    holds : bool
+        Whether it keeps every limit of a rectifier.
+    why_not : str or None
+        Which it does not keep.
+    """
+
+    part: str | None
+    kind: str | None
+    parallel: int
+    conduction_w: float
+    recovery_w: float
+    leakage_w: float
+    total_w: float
+    junction_c: float | None
+    runaway_margin: float | None
+    efficiency: float
+    frequency_hz: float
+    holds: bool
+    why_not: str | None
+
+    def to_dict(self) -> dict[str, Any]:
+        """The row by key."""
+        return {member.name: getattr(self, member.name) for member in fields(self)}
+
+    @property
+    def label(self) -> str:
+        """Such as ``2 x 1N5822``."""
+        name = self.part or "as given"
+        return name if self.parallel == 1 else f"{self.parallel} x {name}"
+
+
+@dataclass(frozen=True, kw_only=True)
+class Comparison:
+    """Rectifiers side by side.
+
+    Attributes
+    ----------
+    rows : tuple of RectifierRow
+        By total loss, the smallest first.
+    own : RectifierRow
+        The design's own rectifier, which is among the rows.
+    supply_v, load_a, ambient_c : float
+        Operating point.
+    warnings : tuple of str
+        What to mind.
+    """
+
+    rows: tuple[RectifierRow, ...]
+    own: RectifierRow
+    supply_v: float
+    load_a: float
+    ambient_c: float
+    warnings: tuple[str, ...]
+
+    def to_dict(self) -> dict[str, Any]:
+        """Everything by key."""
+        return {"rectifiers": [row.to_dict() for row in self.rows], "warnings": list(self.warnings)}
+
+
+def variants(
+    design: Design, names: Sequence[str], parallel: int, tables: Tables, points: Points
+) -> tuple[list[Variant], list[str]]:
+    """Rectifiers worth a look.
+
+    Parameters
+    ----------
+    design : Design
+        The design.
+    names : sequence of str
+        Parts to compare whatever they are rated; none: all of the table whose ratings suffice.
+    parallel : int
+        Most pieces in parallel.
+    tables : Tables
+        The parts.
+    points : Points
+        Operating points, for the ratings.
+
+    Returns
+    -------
+    tuple
+        The design's own first, then the others; what to mind about them.
+
+    Raises
+    ------
+    UnknownNameError
+        A name is in no table.
+    """
+    own = resolve_design(design, tables)
+    given = design.rectifier
+    kind, pieces_given = own.rectifier.kind, given.parallel
+    found = [Variant(part=given.part, kind=kind, parallel=pieces_given, resolved=own, is_own=True)]
+    wanted = [tables.rectifier(name) for name in dict.fromkeys(names)] or list(tables.rectifiers.values())
+    notes: list[str] = []
+    unknown: list[str] = []
+    left_out = 0
+    own_is_plain = given == RectifierSection(part=given.part, parallel=given.parallel)
+    for part in wanted:
+        for pieces in range(1, parallel + 1):
+            if own_is_plain and (part.name, pieces) == (given.part, given.parallel):
+                continue
+            if not names and not _is_rated(part, pieces, points):
+                left_out += 1
+                continue
+            found.append(_variant(design, part, pieces, tables, notes, unknown))
+    if unknown:
+        listed = ", ".join(dict.fromkeys(unknown))
+        notes.append(f"no value for free air is known, {AXIAL_FREE_AIR:g} K/W assumed: {listed}")
+    if left_out:
+        notes.append(f"{left_out} others of the table are not shown: rated below the voltage or current here")
+    return found, list(dict.fromkeys(notes))
+
+
+def _is_rated(part: Rectifier, pieces: int, points: Points) -> bool:
+    current = float(np.max(points.load_current))
+    enough = part.average_current * pieces >= CURRENT_ROOM * current * 0.5
+    return part.reverse_voltage >= float(np.max(points.supply)) and enough
+
+
+def _variant(
+    design: Design, part: Rectifier, pieces: int, tables: Tables, notes: list[str], unknown: list[str]
+) -> Variant:
+    section = RectifierSection(part=part.name, parallel=pieces)
+    resolved = resolve_design(replace(design, rectifier=section), tables)
+    rectifier, heat = resolved.rectifier, resolved.heat
+    is_axial = part.mounting.startswith("axial")
+    if is_axial and heat.rectifier.is_shared:
+        heat = replace(heat, rectifier=replace(heat.rectifier, is_shared=False))
+        notes.append("axial rectifiers stand in free air, not on the shared heat sink")
+    cooled = heat.rectifier.is_shared or heat.rectifier.heatsink is not None
+    if is_axial and rectifier.junction_ambient is None and (not cooled or rectifier.junction_case is None):
+        rectifier = replace(rectifier, junction_ambient=AXIAL_FREE_AIR)
+        heat = replace(heat, rectifier=replace(heat.rectifier, heatsink=None))
+        unknown.append(part.name)
+    if part.recovery_charge is None and part.kind != "Schottky":
+        notes.append(f"{part.name}: no recovery data, taken as a standard rectifier")
+    resolved = replace(resolved, rectifier=rectifier, heat=heat)
+    return Variant(part=part.name, kind=part.kind, parallel=pieces, resolved=resolved, is_own=False)
+
+
+def operate_variants(tried: Sequence[Variant], points: Points, effort: Effort = STUDY) -> Operated:
+    """All variants at all points, the variant slowest.
+
+    Parameters
+    ----------
+    tried : sequence of Variant
+        The rectifiers.
+    points : Points
+        Operating points, the same for each.
+    effort : Effort
+        How long to look for each steady state.
+
+    Returns
+    -------
+    Operated
+        ``len(tried) * len(points)`` points.
+    """
+    rows = np.concatenate([rows_at(one.resolved, points) for one in tried])
+    designs = [one.resolved for one in tried for _ in range(len(points))]
+    return operate_rows(rows, designs, np.tile(points.ambient_c, len(tried)), effort=effort)
+
+
+def compare_rectifiers(
+    design: Design,
+    names: Sequence[str] = (),
+    *,
+    parallel: int = PIECES,
+    supply: float | None = None,
+    load_current: float | None = None,
+    ambient_c: float | None = None,
+    tables: Tables | None = None,
+    effort: Effort = STUDY,
+) -> Comparison:
+    """Compare rectifiers in a design at one operating point.
+
+    Parameters
+    ----------
+    design : Design
+        The design.
+    names : sequence of str
+        Parts to compare; none: every one of the tables whose ratings suffice.
+    parallel : int
+        Most pieces in parallel.
+    supply, load_current, ambient_c : float, optional
+        [V], [A], [degC]; what is omitted is as in the design.
+    tables : Tables, optional
+        Parts; those of the package where omitted.
+    effort : Effort
+        How long to look for each steady state.
+
+    Returns
+    -------
+    Comparison
+        Rows sorted by total loss, the design's own among them.
+
+    Raises
+    ------
+    InputError
+        A value is not allowed, or a part is not known.
+    """
+    known = load_tables() if tables is None else tables
+    points = points_of(
+        resolve_design(design, known), supply=supply, load_current=load_current, ambient_c=ambient_c
+    )
+    tried, notes = variants(design, names, parallel, known, points)
+    operated = operate_variants(tried, points, effort)
+    rows = rectifier_rows(tried, operated)
+    unknown = [row.label for row in rows if row.junction_c is None and "runaway" not in (row.why_not or "")]
+    if unknown:
+        notes.append("no way for the heat is known, junction not checked: " + ", ".join(unknown))
+    if not operated.is_settled.all():
+        notes.append("losses and temperatures of some did not settle")
+    ordered = sorted(rows, key=lambda row: (row.total_w, row.label))
+    return Comparison(
+        rows=tuple(ordered),
+        own=rows[0],
+        supply_v=float(points.supply[0]),
+        load_a=float(operated.load[0]),
+        ambient_c=float(points.ambient_c[0]),
+        warnings=tuple(notes),
+    )
+
+
+@dataclass(frozen=True, kw_only=True)
+class Judged:
+    """What the comparison takes from operating points, arrays of shape (n,).
+
+    Attributes
+    ----------
+    conduction, recovery, leakage : NDArray
+        [W].
+    junction_c : NDArray
+        Of the hottest piece with typical values [degC].
+    margin, ambient_limit_c : NDArray
+        See `buckdesign.design.temperatures.runaway_reach` [1], [degC].
+    limits : list of Limit
+        Those of the rectifier.
+    """
+
+    conduction: Floats
+    recovery: Floats
+    leakage: Floats
+    junction_c: Floats
+    margin: Floats
+    ambient_limit_c: Floats
+    limits: list[Limit]
+
+    @property
+    def total(self) -> Floats:
+        """[W], shape (n,)."""
+        return self.conduction + self.recovery + self.leakage
+
+    @property
+    def holds(self) -> np.ndarray[Any, np.dtype[np.bool_]]:
+        """Where every limit of a rectifier holds, shape (n,)."""
+        return np.all([limit.holds for limit in self.limits], axis=0)
+
+
+def judged(operated: Operated, designs: Sequence[ResolvedDesign]) -> Judged:
+    """Losses, junction and limits of the rectifier of each point."""
+    losses = operated.balance.losses
+    power = device_heat(losses)
+    heat = heat_data(designs)
+    margin, ambient_limit = runaway_reach(operated.loop, power, operated.data, heat, operated.ambient_c)
+    warmer = hottest_piece_at(operated, rating_data(designs), heat)[1]
+    limits = [one for one in part_limits(operated, designs) if one.name.startswith("rectifier")]
+    return Judged(
+        conduction=losses["rectifier"],
+        recovery=losses["rectifier_recovery"],
+        leakage=losses["rectifier_leakage"],
+        junction_c=operated.junction("rectifier") + warmer,
+        margin=margin,
+        ambient_limit_c=ambient_limit,
+        limits=limits,
+    )
+
+
+def rectifier_rows(tried: Sequence[Variant], operated: Operated) -> list[RectifierRow]:
+    """Rows in the order of the variants, one operating point each."""
+    found = judged(operated, [one.resolved for one in tried])
+    rate = operated.loop.column("frequency_hz")
+    return [
+        RectifierRow(
+            part=one.part,
+            kind=one.kind,
+            parallel=one.parallel,
+            conduction_w=float(found.conduction[index]),
+            recovery_w=float(found.recovery[index]),
+            leakage_w=float(found.leakage[index]),
+            total_w=float(found.total[index]),
+            junction_c=_number(found.junction_c[index]),
+            runaway_margin=_number(found.margin[index]),
+            efficiency=float(operated.efficiency[index]),
+            frequency_hz=float(rate[index]),
+            holds=bool(found.holds[index]),
+            why_not=why_not(found, index),
+        )
+        for index, one in enumerate(tried)
+    ]
+
+
+def why_not(found: Judged, index: int) -> str | None:
+    """Which limits a rectifier does not keep, in words; None where it keeps all."""
+    reasons = []
+    for limit in found.limits:
+        if limit.holds[index]:
+            continue
+        what = limit.name.removeprefix("rectifier ")
+        if np.isnan(limit.value[index]):
+            reasons.append(f"thermal runaway, from {found.ambient_limit_c[index]:.0f} degC ambient up")
+            continue
+        value = format_quantity(float(limit.value[index]), limit.unit, ascii_only=True)
+        most = format_quantity(float(limit.limit[index]), limit.unit, ascii_only=True)
+        reasons.append(f"{what} {value}, limit {most}")
+    return "; ".join(reasons) or None
+
+
+def _number(value: float) -> float | None:
+    return float(value) if np.isfinite(value) else None
+
+
+__all__ = [
+    "PIECES",
+    "Comparison",
+    "Judged",
+    "RectifierRow",
+    "Variant",
+    "compare_rectifiers",
+    "judged",
+    "operate_variants",
+    "rectifier_rows",
+    "variants",
+    "why_not",
+]
