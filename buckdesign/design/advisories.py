@@ -11,6 +11,7 @@ from buckdesign.design.elements import CapacitorElement, ResolvedDesign
 from buckdesign.design.losses import flux_density_swing, loop_losses
 from buckdesign.design.operated import Operated
 from buckdesign.design.operating_point import Transient
+from buckdesign.design.runaway_search import runaway_ambient
 from buckdesign.design.sections import DEVICES
 from buckdesign.design.temperatures import device_heat, heat_data, runaway_reach
 from buckdesign.loop.results import SteadyStates
@@ -148,6 +149,8 @@ def _runaway(operated: Operated, resolved: ResolvedDesign, index: int) -> tuple[
     heat = device_heat(operated.balance.losses)[part]
     data = operated.data.part(np.array([index]))
     margin, begins = runaway_reach(loop, heat, data, heat_data([resolved]), operated.ambient_c[part])
+    if operated.balance.runaway[index]:
+        begins = runaway_ambient(operated.base_rows[part], [resolved], operated.ambient_c[part])
     return float(margin[0]), float(begins[0])
 
 

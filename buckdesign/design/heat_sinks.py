@@ -2,14 +2,25 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import asdict, dataclass
 from typing import Any
 
+import numpy as np
+
 from buckdesign.design.elements import HeatPath, ResolvedDesign
-from buckdesign.design.hot_parameters import RECTIFIER
+from buckdesign.design.hot_parameters import RECTIFIER, hot_data, parameters_at
+from buckdesign.design.losses import (
+    LEAKAGE_CEILING_C,
+    Floats,
+    junction_capacitance_loss,
+    loop_losses,
+    rectifier_leakage_loss,
+)
 from buckdesign.design.operated import Operated
 from buckdesign.design.sections import DEVICES
 from buckdesign.design.temperatures import device_heat
+from buckdesign.loop.results import SteadyStates, steady_states
 from buckdesign.physics.convection import (
     BRIGHT_EMISSIVITY,
     ENAMEL_EMISSIVITY,
@@ -143,14 +154,53 @@ def heat_sinks(operated: Operated, resolved: ResolvedDesign, index: int) -> Heat
     Returns
     -------
     HeatSinks
-        With typical losses; limits are those of the junctions, without a reserve.
+        With typical losses, for what is needed those at the junction's limit, which are larger than the present
+        ones; limits are those of the junctions, without a reserve.
     """
     heat = device_heat(operated.balance.losses)[index]
     heat[RECTIFIER] += operated.balance.losses["rectifier_leakage"][index]
     ambient = float(operated.ambient_c[index])
-    by_name = {name: float(power) for name, power in zip(DEVICES, heat, strict=True)}
-    found = {name: _device(resolved, name, power, ambient) for name, power in by_name.items()}
-    return HeatSinks(**found, shared=_shared(resolved, by_name, ambient))
+    now = dict(zip(DEVICES, (float(power) for power in heat), strict=True))
+    junction = operated.balance.junction_c[index]
+    limits = np.array([_limit(resolved, name) for name in DEVICES])
+    tried = np.tile(junction, (len(DEVICES) + 1, 1))
+    at = np.arange(len(DEVICES))
+    tried[at, at] = np.where(np.isnan(limits), junction, limits)
+    tightest = _shared(resolved, now, now, ambient)
+    if tightest is not None and tightest.limited_by is not None:
+        which = DEVICES.index(tightest.limited_by)
+        tried[-1] += np.nan_to_num(limits[which] - junction[which])
+    hot = _heat_at(operated, resolved, index, tried)
+    found = {
+        name: _device(resolved, name, now[name], float(hot[place, place]), ambient)
+        for place, name in enumerate(DEVICES)
+    }
+    together = dict(zip(DEVICES, (float(power) for power in hot[-1]), strict=True))
+    return HeatSinks(**found, shared=_shared(resolved, now, together, ambient))
+
+
+def _limit(resolved: ResolvedDesign, name: str) -> float:
+    limit = getattr(resolved, name).junction_limit_c
+    return math.nan if limit is None else float(limit)
+
+
+def _heat_at(operated: Operated, resolved: ResolvedDesign, index: int, junction_c: Floats) -> Floats:
+    """Heat in each device with junctions held at temperatures, rows of `junction_c` [W]."""
+    count = len(junction_c)
+    same = np.full(count, index)
+    ways, loop = hot_data([resolved] * count), operated.loop
+    before = SteadyStates(values=loop.values[same], ends=loop.ends[same])
+    ambient, choke = operated.ambient_c[same], operated.balance.choke_c[same]
+    rows = parameters_at(operated.base_rows[same], ways, junction_c, choke, ambient, before)
+    run = steady_states(rows, starts=before.ends[:, :5])
+    losses = loop_losses(run)
+    data = operated.data.part(same)
+    losses["rectifier_recovery"] += junction_capacitance_loss(run, data)
+    heat = device_heat(losses)
+    rectifier = junction_c[:, RECTIFIER]
+    leaking = np.where(np.isnan(rectifier), ambient, np.minimum(rectifier, LEAKAGE_CEILING_C))
+    heat[:, RECTIFIER] += rectifier_leakage_loss(run, data, leaking)
+    return heat
 
 
 def plate_for(resistance: float, heat: float, ambient_c: float) -> Plate:
@@ -179,7 +229,9 @@ def plate_for(resistance: float, heat: float, ambient_c: float) -> Plate:
     return Plate(side_m=middle, side_low_m=low, side_high_m=high, bright_side_m=bright)
 
 
-def _device(resolved: ResolvedDesign, name: str, heat: float, ambient: float) -> DeviceSink:
+def _device(
+    resolved: ResolvedDesign, name: str, heat: float, hot_heat: float, ambient: float
+) -> DeviceSink:
     element = getattr(resolved, name)
     path: HeatPath = getattr(resolved.heat, name)
     pieces = getattr(element, "parallel", 1)
@@ -189,7 +241,7 @@ def _device(resolved: ResolvedDesign, name: str, heat: float, ambient: float) ->
     needed = None
     if limit is not None and case is not None and heat > TINY_HEAT:
         inside = case / pieces, path.pad / pieces
-        needed = float(sink_resistance_needed(heat, limit, ambient, *inside))
+        needed = float(sink_resistance_needed(hot_heat, limit, ambient, *inside))
     needs = None if bare is None or limit is None else bare > limit
     worth = needed is not None and 0.0 < needed < LARGE_RESISTANCE and needs is not False
     return DeviceSink(
@@ -198,7 +250,7 @@ def _device(resolved: ResolvedDesign, name: str, heat: float, ambient: float) ->
         needed_k_per_w=needed,
         without_sink_c=bare,
         needs_sink=needs,
-        plate=plate_for(needed, heat, ambient) if worth and needed is not None else None,
+        plate=plate_for(needed, hot_heat, ambient) if worth and needed is not None else None,
     )
 
 
@@ -211,19 +263,21 @@ def _free_air(element: Any) -> float | None:
     return FREE_AIR.get(package) if package is not None else None
 
 
-def _shared(resolved: ResolvedDesign, heat: dict[str, float], ambient: float) -> SharedSink | None:
+def _shared(
+    resolved: ResolvedDesign, now: dict[str, float], hot: dict[str, float], ambient: float
+) -> SharedSink | None:
     fitted = resolved.heat.shared_heatsink
     names = [name for name in DEVICES if getattr(resolved.heat, name).is_shared]
     if fitted is None or not names:
         return None
-    total = float(sum(heat[name] for name in names))
+    total, hot_total = (float(sum(heat[name] for name in names)) for heat in (now, hot))
     needs: dict[str, float] = {}
     for name in names:
         element, path = getattr(resolved, name), getattr(resolved.heat, name)
         if element.junction_limit_c is None or element.junction_case is None or total <= TINY_HEAT:
             continue
-        inside = (element.junction_case + path.pad) / getattr(element, "parallel", 1) * heat[name]
-        needs[name] = float((element.junction_limit_c - ambient - inside) / total)
+        inside = (element.junction_case + path.pad) / getattr(element, "parallel", 1) * hot[name]
+        needs[name] = float((element.junction_limit_c - ambient - inside) / hot_total)
     least = min(needs, key=lambda name: needs[name]) if needs else None
     needed = None if least is None else needs[least]
     return SharedSink(
@@ -233,7 +287,7 @@ def _shared(resolved: ResolvedDesign, heat: dict[str, float], ambient: float) ->
         needed_k_per_w=needed,
         limited_by=least,
         sink_c=ambient + fitted * total,
-        plate=plate_for(needed, total, ambient) if needed is not None and needed > 0.0 else None,
+        plate=plate_for(needed, hot_total, ambient) if needed is not None and needed > 0.0 else None,
     )
 
 

@@ -18,6 +18,7 @@ from buckdesign.design.losses import Floats
 from buckdesign.design.operated import Operated, Points, operate_rows, points_of, rows_at
 from buckdesign.design.ratings import rating_data
 from buckdesign.design.resolve import resolve_design
+from buckdesign.design.runaway_search import runaway_ambient
 from buckdesign.design.sections import RectifierSection
 from buckdesign.design.temperatures import device_heat, heat_data, runaway_reach
 from buckdesign.loop.results import STUDY, Effort
@@ -362,7 +363,14 @@ def judged(operated: Operated, designs: Sequence[ResolvedDesign]) -> Judged:
 
 def rectifier_rows(tried: Sequence[Variant], operated: Operated) -> list[RectifierRow]:
     """Rows in the order of the variants, one operating point each."""
-    found = judged(operated, [one.resolved for one in tried])
+    designs = [one.resolved for one in tried]
+    found = judged(operated, designs)
+    lost = np.flatnonzero(operated.balance.runaway)
+    begins = found.ambient_limit_c.copy()
+    begins[lost] = runaway_ambient(
+        operated.base_rows[lost], [designs[index] for index in lost], operated.ambient_c[lost]
+    )
+    found = replace(found, ambient_limit_c=begins)
     rate = operated.loop.column("frequency_hz")
     return [
         RectifierRow(
