@@ -30,7 +30,7 @@ from .cycles import BEGAN, FROM_EMPTY, FROM_NODE, G_BEGAN, PROGRESS, RESTS, coun
 
 DIMENSIONS = 4
 MEMORY = 4
-CLOSED = 2e-9
+CLOSED = 1e-8
 MOST_PERIOD = 12
 
 PERIODIC, IRREGULAR, AT_REST, UNSETTLED = 0, 1, 2, 3
@@ -307,13 +307,13 @@ def _history(trail: Array, kinds: Discrete, n: int, repeats: int, points: Array,
 
 @compiled
 def _shrinks(trail: Array, kinds: Discrete, n: int, repeats: int) -> bool:
-    """Whether the last steps along the trail fell by at least 0.6 each."""
-    if n < 6 or repeats > 1:
+    """Whether the last three steps along the trail fell to three quarters or less of the one before."""
+    if n < 5 or repeats > 1:
         return False
-    for k in range(1, 5):
+    for k in range(1, 4):
         late = _apart(trail[(n - k) % 64], trail[(n - k - 1) % 64])
         early = _apart(trail[(n - k - 1) % 64], trail[(n - k - 2) % 64])
-        if late > 0.6 * early or kinds[(n - k) % 64] != kinds[(n - k - 1) % 64]:
+        if late > 0.75 * early or kinds[(n - k) % 64] != kinds[(n - k - 1) % 64]:
             return False
     return True
 
