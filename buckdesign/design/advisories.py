@@ -8,12 +8,13 @@ import numpy as np
 
 from buckdesign.design.checks import Limit
 from buckdesign.design.elements import CapacitorElement, ResolvedDesign
+from buckdesign.design.heat_paths import heat_data
 from buckdesign.design.losses import flux_density_swing, loop_losses
 from buckdesign.design.operated import Operated
 from buckdesign.design.operating_point import Transient
 from buckdesign.design.runaway_search import runaway_ambient
 from buckdesign.design.sections import DEVICES
-from buckdesign.design.temperatures import device_heat, heat_data, runaway_reach
+from buckdesign.design.temperatures import device_heat, runaway_reach
 from buckdesign.loop.results import SteadyStates
 from buckdesign.physics.capacitor import tantalum_is_safe
 from buckdesign.physics.core_loss import RANGES as CORE_RANGES
@@ -287,7 +288,8 @@ def _source_warnings(resolved: ResolvedDesign) -> list[str]:
     ]
     if not given:
         return []
-    return [f"the supply is taken as stiff: its {' and '.join(given)} are not in this simulation"]
+    verb = "are" if len(given) > 1 else "is"
+    return [f"the supply is taken as stiff: its {' and '.join(given)} {verb} not in this simulation"]
 
 
 def start_warnings(transient: Transient, resolved: ResolvedDesign) -> tuple[str, ...]:
@@ -308,7 +310,10 @@ def start_warnings(transient: Transient, resolved: ResolvedDesign) -> tuple[str,
     found = []
     rated, peak = resolved.transistor.collector_current, transient.peak_choke_a
     if rated is not None and peak > rated:
-        found.append(f"at switch-on the transistor carries up to {peak:.3g} A, rated {rated:g} A")
+        found.append(
+            f"at switch-on the transistor carries up to {peak:.3g} A, rated {rated:g} A: let the supply rise over "
+            "some milliseconds, or take one rated for it"
+        )
     nominal = resolved.design.output.voltage
     if transient.peak_output_v > (1.0 + SET_VOLTAGE_BAND) * nominal:
         found.append(f"at switch-on the output overshoots to {transient.peak_output_v:.4g} V")

@@ -14,13 +14,14 @@ import numpy as np
 from numpy.typing import NDArray
 
 from buckdesign.design.elements import ResolvedDesign
+from buckdesign.design.heat_paths import HeatData, heat_data
 from buckdesign.design.hot_parameters import RECTIFIER, TRANSISTOR
 from buckdesign.design.losses import Floats, input_ripple_rms
 from buckdesign.design.operated import Operated
 from buckdesign.design.operating_point import Check
 from buckdesign.design.ratings import RatingData, rating_data
 from buckdesign.design.sections import DEVICES
-from buckdesign.design.temperatures import HeatData, device_heat, heat_data, junctions
+from buckdesign.design.temperatures import device_heat, junctions
 from buckdesign.physics.bias import flux_density
 from buckdesign.physics.capacitor import electrolytic_life, ripple_rise
 from buckdesign.physics.diode import conduction_loss, hottest_piece

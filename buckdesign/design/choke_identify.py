@@ -87,6 +87,10 @@ class TestReading:
             )
 
 
+LARGEST_RING = 0.5
+"""Dimension above which a number without a unit was surely meant in millimetres [m] (own choice)."""
+
+
 @dataclass(frozen=True, kw_only=True)
 class RingSize:
     """Measured dimensions and how well they are known.
@@ -115,6 +119,8 @@ class RingSize:
             value = getattr(self, name)
             if not (math.isfinite(value) and value > 0.0):
                 raise InputError(f"{name} = {value:g} m: a value above 0 is wanted")
+            if value > LARGEST_RING:
+                raise InputError(f'{name} = {value:g} m: no ring is that large; write "{value:g} mm" for millimetres')
         if self.inner >= self.outer:
             raise InputError(f"inner = {self.inner:g} m: must be smaller than outer, {self.outer:g} m")
         for name in ("dimension_tolerance", "meter_tolerance"):

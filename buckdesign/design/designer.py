@@ -4,12 +4,15 @@ from __future__ import annotations
 
 import numpy as np
 
+from buckdesign.design.advisories import start_warnings
 from buckdesign.design.attempts import Attempt, Progress, attempt
 from buckdesign.design.describing import alternatives, component_values, gathered, gathered_warnings
 from buckdesign.design.design_result import Blocking, DesignResult
 from buckdesign.design.judging import Judged
+from buckdesign.design.operated import operate_rows
 from buckdesign.design.operating import checked_points
 from buckdesign.design.requirement import Requirement
+from buckdesign.design.start_up import start_from_rest
 from buckdesign.loop.parameters import COLUMN
 from buckdesign.loop.results import steady_states
 from buckdesign.parts import Tables, load_tables
@@ -82,7 +85,7 @@ def result_of(requirement: Requirement, found: Attempt, blocking: tuple[Blocking
         alternatives=tuple(alternatives(requirement, best, others)),
         frequency_spread_hz=frequency_spread(requirement, best),
         values=component_values(best),
-        warnings=gathered_warnings(corners) + _notes(best),
+        warnings=_start_stress(best) + gathered_warnings(corners) + _notes(best),
         cautions=gathered([point.cautions for point in corners]),
         assumptions=gathered([point.assumptions for point in corners]),
     )
@@ -104,6 +107,19 @@ def frequency_spread(requirement: Requirement, best: Judged) -> tuple[float, flo
 def _urgency(check: object) -> tuple[bool, float]:
     margin = getattr(check, "margin", None)
     return bool(getattr(check, "holds", True)), float("-inf") if margin is None else float(margin)
+
+
+def _start_stress(best: Judged) -> tuple[str, ...]:
+    """What a start from rest at the highest supply and full load asks of the parts."""
+    operated = best.operated
+    worst = int(np.lexsort((operated.load, operated.parameter("supply_voltage")))[-1])
+    alone = operate_rows(operated.base_rows[worst : worst + 1], best.resolved, operated.ambient_c[worst : worst + 1])
+    transient, _ = start_from_rest(alone, best.resolved)
+    supply = float(operated.parameter("supply_voltage")[worst])
+    peak = f"switched on at once into full load at {supply:g} V the choke peaks at {transient.peak_choke_a:.3g} A"
+    if transient.settling_s is not None:
+        peak += f"; the output settles in {transient.settling_s * 1e3:.2g} ms"
+    return (peak, *start_warnings(transient, best.resolved))
 
 
 def _notes(best: Judged) -> tuple[str, ...]:

@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from buckdesign.design.elements import ResolvedDesign
+from buckdesign.design.heat_paths import ways_of
 from buckdesign.design.losses import (
     LOSSES,
     Floats,
@@ -21,7 +22,8 @@ from buckdesign.design.losses import (
 from buckdesign.design.operating_point import OperatingPoint
 from buckdesign.design.resolve import loop_parameters
 from buckdesign.design.sections import DEVICES
-from buckdesign.design.temperatures import SETTLED, Balance, Settled, settle_temperatures, ways_of
+from buckdesign.design.settling import SETTLED, Settled, settle_temperatures
+from buckdesign.design.temperatures import Balance
 from buckdesign.errors import InputError
 from buckdesign.loop.constants import STATES
 from buckdesign.loop.parameters import COLUMN, LoopParameters

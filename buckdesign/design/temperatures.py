@@ -1,29 +1,24 @@
 """Temperatures of junctions and choke, solved together with the losses that depend on them.
 
-The loop is run again with the parameters that a temperature changes, until the temperatures stand still. What
-feeds back quickly, the rectifier's leakage and the resistance of the copper, is solved within each run.
+What feeds back quickly, the rectifier's leakage and the resistance of the copper, is solved within each run of the
+loop; `buckdesign.design.settling` runs it again until the temperatures stand still.
 """
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from dataclasses import dataclass, fields
-from typing import Any, Protocol
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 from buckdesign.constants import COPPER_REFERENCE_C
-from buckdesign.design.elements import HeatPath, HeatPaths, RectifierElement, ResolvedDesign
+from buckdesign.design.heat_paths import HeatData, Ways
 from buckdesign.design.hot_parameters import (
     COPPER_CEILING_C,
-    PARAMETER_RANGE_C,
     RECTIFIER,
     REGULATOR,
     TRANSISTOR,
     HotData,
-    hot_data,
-    parameters_at,
 )
 from buckdesign.design.losses import (
     LEAKAGE_CEILING_C,
@@ -32,7 +27,6 @@ from buckdesign.design.losses import (
     copper_ac_loss,
     copper_resistance_factor,
     core_loss,
-    data_by_point,
     input_capacitor_loss,
     input_ripple_rms,
     junction_capacitance_loss,
@@ -49,123 +43,7 @@ from buckdesign.physics.convection import ring_rise
 from buckdesign.physics.runaway import junction_with_leakage, runaway_margin, runaway_room
 from buckdesign.physics.thermal import ring_rise_surface_rule
 
-MIXING = (-9.0, 0.95)
-"""Bounds of the part of the last step that is taken back [1] (own choice: a slope between -20 and 0.9)."""
-
-RUNS = 8
-"""Most runs of the loop to settle the temperatures [1] (own choice; two to three are usual)."""
-
-SETTLED = 0.5
-"""Change between two runs below which temperatures stand still [K] (own choice: what is left changes the rate
-of the loop by 0.3 % at most, and the temperatures by about a tenth of it)."""
-
-SETTLED_IRREGULAR = 2.0
-"""The same for oscillation that is irregular or repeats only after several cycles, whose averages jump
-from run to run [K] (own choice)."""
-
-RESTLESS = 8.0
-"""The same over the change that others may have [1] (own choice: a short average scatters by some per cent)."""
-
-IDLE_SHARE = 20.0
-"""How much further the regulator may move, on which the loop hardly depends [1] (own choice)."""
-
-ESR_FELT, LOSS_FELT, DROP_FELT = 4e-3, 4e-3, 2e-3
-"""What counts like a kelvin: change of the ESR [1], of the recovery loss over all losses [1], of the
-saturation voltage [V] (own choice)."""
-
 _COPPER_STEPS = 12
-
-
-@dataclass(frozen=True, kw_only=True)
-class HeatData:
-    """Ways of the heat, one entry a point; devices in the order of `DEVICES`.
-
-    Attributes
-    ----------
-    own : NDArray
-        From junction to ambient, or to the shared heat sink where a device sits on it [K/W], shape (n, 3);
-        NaN where not known. Pieces in parallel share the heat alike.
-    is_shared : NDArray
-        Whether it sits on the shared heat sink, shape (n, 3).
-    sink : NDArray
-        The shared heat sink [K/W], shape (n,).
-    piece : NDArray
-        Part of the way that one piece of the rectifier has for itself [K/W], shape (n,); NaN where not known.
-    """
-
-    own: Floats
-    is_shared: NDArray[np.bool_]
-    sink: Floats
-    piece: Floats
-
-    def part(self, which: NDArray[np.intp]) -> HeatData:
-        """Some of the points."""
-        return HeatData(**{one.name: getattr(self, one.name)[which] for one in fields(self)})
-
-
-def heat_data(resolved: Sequence[ResolvedDesign]) -> HeatData:
-    """`HeatData` of the design of each point."""
-    return data_by_point(resolved, _heat_record, HeatData)
-
-
-def _heat_record(resolved: ResolvedDesign) -> dict[str, Any]:
-    heat = resolved.heat
-    own, shared = [], []
-    for name in DEVICES:
-        path: HeatPath = getattr(heat, name)
-        element = getattr(resolved, name)
-        on_shared = path.is_shared and path.heatsink is None and heat.shared_heatsink is not None
-        own.append(_own_resistance(path, element, on_shared))
-        shared.append(on_shared)
-    return {
-        "own": own,
-        "is_shared": shared,
-        "sink": heat.shared_heatsink or 0.0,
-        "piece": _piece_resistance(heat, resolved.rectifier),
-    }
-
-
-def _own_resistance(path: HeatPath, element: Any, on_shared: bool) -> float:
-    pieces = getattr(element, "parallel", 1)
-    case = np.nan if element.junction_case is None else element.junction_case
-    if on_shared:
-        return float((case + path.pad) / pieces)
-    if path.heatsink is not None:
-        return float(path.heatsink + (case + path.pad) / pieces)
-    free = getattr(element, "junction_ambient", None)
-    return np.nan if free is None else float(free / pieces)
-
-
-def ways_of(resolved: Sequence[ResolvedDesign]) -> Ways:
-    """`Ways` of the design of each point."""
-    return Ways(heat=heat_data(resolved), hot=hot_data(resolved))
-
-
-def _piece_resistance(heat: HeatPaths, rectifier: RectifierElement) -> float:
-    path, case = heat.rectifier, rectifier.junction_case
-    if path.heatsink is not None or (path.is_shared and heat.shared_heatsink is not None):
-        return np.nan if case is None else float(case + path.pad)
-    return np.nan if rectifier.junction_ambient is None else float(rectifier.junction_ambient)
-
-
-@dataclass(frozen=True, kw_only=True)
-class Ways:
-    """Ways of the heat, and what follows it.
-
-    Attributes
-    ----------
-    heat : HeatData
-        Thermal resistances.
-    hot : HotData
-        What the loop's parameters follow.
-    """
-
-    heat: HeatData
-    hot: HotData
-
-    def part(self, which: NDArray[np.intp]) -> Ways:
-        """Some of the points."""
-        return Ways(heat=self.heat.part(which), hot=self.hot.part(which))
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -301,7 +179,7 @@ def junctions(
         Junctions [degC], shape (n, 3), NaN where not known or without balance; leakage loss [W], in runaway
         the largest that could still be carried off; where the leakage finds no balance.
     """
-    junction, path = _without_leakage(power, heat, ambient_c)
+    junction, path = without_leakage(power, heat, ambient_c)
     base = junction[:, RECTIFIER]
     known = np.isfinite(base) & np.isfinite(path)
     start = np.where(known, np.minimum(base, LEAKAGE_CEILING_C), ambient_c)
@@ -323,8 +201,23 @@ def junctions(
     return np.where(lost, np.nan, junction), leakage, runaway
 
 
-def _without_leakage(power: Floats, heat: HeatData, ambient_c: Floats) -> tuple[Floats, Floats]:
-    """Junctions but for the leakage's heat [degC], shape (n, 3), and the rectifier's way to ambient [K/W]."""
+def without_leakage(power: Floats, heat: HeatData, ambient_c: Floats) -> tuple[Floats, Floats]:
+    """Junctions but for the leakage's heat [degC], shape (n, 3), and the rectifier's way to ambient [K/W].
+
+    Parameters
+    ----------
+    power : NDArray
+        Heat in each device [W], shape (n, 3).
+    heat : HeatData
+        Of the same points.
+    ambient_c : NDArray
+        [degC], shape (n,).
+
+    Returns
+    -------
+    tuple of NDArray
+        See above; NaN where not known.
+    """
     on_sink = np.sum(np.where(heat.is_shared, power, 0.0), axis=1)
     junction = ambient_c[:, None] + heat.own * power + heat.is_shared * (heat.sink * on_sink)[:, None]
     path = heat.own[:, RECTIFIER] + np.where(heat.is_shared[:, RECTIFIER], heat.sink, 0.0)
@@ -355,7 +248,7 @@ def runaway_reach(
         [1]; ambient at which runaway begins with these losses [degC]. Shape (n,); NaN where there is no
         leakage or no way for the heat is known.
     """
-    junction, path = _without_leakage(power, heat, ambient_c)
+    junction, path = without_leakage(power, heat, ambient_c)
     base = junction[:, RECTIFIER]
     at_base = rectifier_leakage_loss(loop, data, np.where(np.isfinite(base), base, ambient_c))
     known = np.isfinite(base) & np.isfinite(path) & (at_base > 0.0) & (path > 0.0)
@@ -365,144 +258,3 @@ def runaway_reach(
     margin = runaway_margin(np.maximum(at_hot, 1e-12), data.leakage_coefficient, path)
     room = runaway_room(at_base, data.leakage_coefficient, path)
     return np.where(known, margin, np.nan), np.where(known, ambient_c + room, np.nan)
-
-
-class Run(Protocol):
-    """Runs the loop for some rows."""
-
-    def __call__(
-        self, some: Floats, starts: Floats | None, is_irregular: NDArray[np.bool_]
-    ) -> SteadyStates:
-        """Steady states of the rows, from given states near their end or the usual ones; which of them were
-        irregular in the run before.
-        """
-
-
-@dataclass(frozen=True, kw_only=True)
-class Settled:
-    """The loop and its temperatures in agreement.
-
-    Attributes
-    ----------
-    loop : SteadyStates
-        The last run.
-    rows : NDArray
-        Parameters of the last run, shape (n, columns).
-    balance : Balance
-        Losses and temperatures.
-    is_settled : NDArray
-        Where the temperatures stand still, shape (n,).
-    """
-
-    loop: SteadyStates
-    rows: Floats
-    balance: Balance
-    is_settled: NDArray[np.bool_]
-
-
-def settle_temperatures(
-    rows: Floats, run: Run, data: LossData, ways: Ways, ambient_c: Floats, precision: float = SETTLED
-) -> Settled:
-    """Run the loop until its losses and the temperatures agree.
-
-    Parameters
-    ----------
-    rows : NDArray
-        Parameters at 25 degC, shape (n, columns).
-    run : callable
-        Runs the loop for some of the rows.
-    data, ways : LossData, Ways
-        Of the same points.
-    ambient_c : NDArray
-        [degC], shape (n,).
-    precision : float
-        Change below which temperatures stand still [K].
-
-    Returns
-    -------
-    Settled
-        With at most `RUNS` runs; only points whose parameters still move are run again, each from where its
-        last run ended.
-    """
-    ambient = np.repeat(ambient_c[:, None], len(DEVICES) + 1, axis=1)
-    known = np.column_stack([np.isfinite(ways.heat.own), np.isfinite(data.surface)])
-    steps = _Steps(np.where(known, ambient, np.nan))
-    now = parameters_at(rows, ways.hot, steps.at[:, :-1], steps.at[:, -1], ambient_c)
-    loop = run(now, None, np.zeros(len(rows), dtype=bool))
-    moving = np.ones(len(rows), dtype=bool)
-    which = np.arange(len(rows))
-    for turn in range(1, RUNS + 1):
-        part = SteadyStates(values=loop.values[which], ends=loop.ends[which])
-        some = ways.part(which)
-        found = balance(part, rows[which], data.part(which), some, ambient_c[which], steps.at[which, -1])
-        change = np.column_stack([found.junction_c, found.choke_c]) - steps.at[which]
-        change = np.where(np.isfinite(change), change, 0.0)
-        irregular = part.column("period_cycles") < 0.0
-        restless = irregular | (part.column("period_cycles") > 1.0)
-        enough = np.where(restless, np.maximum(SETTLED_IRREGULAR, RESTLESS * precision), precision)
-        there = steps.at[which]
-        then = parameters_at(rows[which], some.hot, there[:, :-1], there[:, -1], ambient_c[which], part)
-        moves = np.maximum(_felt(there, change), _felt_by_rows(now[which], then, part, found)) > enough
-        moving[which] = moves
-        if turn == RUNS or not moves.any():
-            break
-        steps.take(which[moves], change[moves])
-        which, irregular, some = which[moves], irregular[moves], some.part(np.flatnonzero(moves))
-        part = SteadyStates(values=part.values[moves], ends=part.ends[moves])
-        there = steps.at[which]
-        now[which] = parameters_at(rows[which], some.hot, there[:, :-1], there[:, -1], ambient_c[which], part)
-        again = run(now[which], loop.ends[which, :5], irregular)
-        loop.values[which], loop.ends[which] = again.values, again.ends
-    last = balance(loop, rows, data, ways, ambient_c, steps.at[:, -1])
-    return Settled(loop=loop, rows=now, balance=last, is_settled=~moving)
-
-
-def _felt(at: Floats, change: Floats) -> Floats:
-    """Largest part of a change of temperature that the loop's parameters follow [K], shape (n,)."""
-    low, high = PARAMETER_RANGE_C
-    tops = np.full(len(DEVICES) + 1, high)
-    tops[-1] = COPPER_CEILING_C
-    felt = np.abs(np.clip(at + change, low, tops) - np.clip(at, low, tops))
-    felt[:, REGULATOR] /= IDLE_SHARE
-    return np.where(np.isfinite(felt), felt, 0.0).max(axis=1)
-
-
-def _felt_by_rows(now: Floats, then: Floats, loop: SteadyStates, found: Balance) -> Floats:
-    """Change of what follows the loop rather than a temperature, as a change of temperature [K], shape (n,).
-
-    The rate of loops that do not repeat each cycle differs from run to run, and so does the ESR.
-    """
-    esr, charge, drop = COLUMN["esr"], COLUMN["recovery_charge"], COLUMN["saturation_voltage"]
-    total = np.maximum(sum(found.losses.values(), np.zeros(len(now))), 1e-3)
-    regular = loop.column("period_cycles") == 1.0
-    swept = np.abs(then[:, charge] - now[:, charge]) * now[:, COLUMN["supply_voltage"]]
-    return np.maximum.reduce(
-        [
-            np.where(regular, np.abs(then[:, esr] / np.maximum(now[:, esr], 1e-9) - 1.0), 0.0) / ESR_FELT,
-            swept * loop.column("frequency_hz") / total / LOSS_FELT,
-            np.abs(then[:, drop] - now[:, drop]) / DROP_FELT,
-        ]
-    )
-
-
-class _Steps:
-    """Temperatures on their way to a fixed point, by Anderson's method with a memory of one step.
-
-    Plain iteration overshoots: a hotter transistor switches more slowly, so that rate and losses fall.
-    """
-
-    def __init__(self, start: Floats) -> None:
-        self.at = start
-        self._moved = np.full_like(start, np.nan)
-        self._change = np.full_like(start, np.nan)
-
-    def take(self, which: NDArray[np.intp], change: Floats) -> None:
-        """Move some points; `change` is what the losses found ask for [K], shape (k, 4)."""
-        slope = change - self._change[which]
-        square = np.square(slope).sum(axis=1)
-        usable = np.isfinite(square) & (square > 0.0)
-        mixed = (change * slope).sum(axis=1) / np.where(usable, square, 1.0)
-        share = np.where(usable, np.clip(mixed, *MIXING), 0.0)[:, None]
-        step = change - np.where(share != 0.0, share * (self._moved[which] + slope), 0.0)
-        self.at[which] += step
-        self._moved[which], self._change[which] = step, change

@@ -14,13 +14,14 @@ import numpy as np
 from buckdesign.design.checks import Limit, hottest_piece_at, part_limits
 from buckdesign.design.design_file import Design
 from buckdesign.design.elements import ResolvedDesign
+from buckdesign.design.heat_paths import heat_data
 from buckdesign.design.losses import Floats
 from buckdesign.design.operated import Operated, Points, operate_rows, points_of, rows_at
 from buckdesign.design.ratings import rating_data
 from buckdesign.design.resolve import resolve_design
 from buckdesign.design.runaway_search import runaway_ambient
 from buckdesign.design.sections import RectifierSection
-from buckdesign.design.temperatures import device_heat, heat_data, runaway_reach
+from buckdesign.design.temperatures import device_heat, runaway_reach
 from buckdesign.loop.results import STUDY, Effort
 from buckdesign.parts import Rectifier, Tables, load_tables
 from buckdesign.units import format_quantity

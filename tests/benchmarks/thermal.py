@@ -1,7 +1,7 @@
 """How many electro-thermal steady states a second two processors find, and electrical ones beside them.
 
-Run it as a script; ``--json`` prints one JSON object. Rates are measured side by side in one run, in wall time and in
-processor time of both processors; it passes or fails nothing.
+Run it as a script; ``--json`` prints one JSON object. Rates are measured side by side in one run, in wall time
+and in processor time of both processors; it passes or fails nothing.
 """
 
 from __future__ import annotations
@@ -9,11 +9,15 @@ from __future__ import annotations
 import argparse
 import json
 import os
+import sys
 import time
 from collections.abc import Callable
+from pathlib import Path
 from typing import Any
 
 import numpy as np
+
+sys.path.insert(0, str(Path(__file__).parents[2]))
 
 from buckdesign.design.operating import operate_rows
 from buckdesign.loop.parameters import COLUMN

@@ -7,6 +7,7 @@ from typing import Any
 import numpy as np
 import pytest
 
+from buckdesign.design.heat_paths import heat_data
 from buckdesign.design.hot_parameters import COPPER_CEILING_C, RECTIFIER, hot_data, parameters_at
 from buckdesign.design.losses import (
     LEAKAGE_CEILING_C,
@@ -16,12 +17,8 @@ from buckdesign.design.losses import (
 )
 from buckdesign.design.operating import operate, operate_rows, points_of, rows_at
 from buckdesign.design.sections import DEVICES
-from buckdesign.design.temperatures import (
-    SETTLED,
-    device_heat,
-    heat_data,
-    junctions,
-)
+from buckdesign.design.settling import SETTLED
+from buckdesign.design.temperatures import device_heat, junctions
 from buckdesign.loop.parameters import COLUMN
 from buckdesign.physics.convection import ring_rise
 from buckdesign.physics.thermal import ring_rise_surface_rule, shared_sink_junctions
