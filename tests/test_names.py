@@ -22,7 +22,6 @@ FORBIDDEN = {
     "a regulator by type number": r"\b(?:LM|LT|TL|MC|UA)\d{3,4}[A-Z]{0,3}\b",
     "a ring by shape code": r"\b(?:FT|T)\d{2,3}-\d{1,2}[A-D]?\b",
     "a material by mix number or colour": r"\b[Mm]ix[ -]?\d|\b(?:yellow|green|blue)[/-](?:white|blue|red)\b",
-    "a source that is no publication": r"(?i)\b(?:transcript|lecture|video|speaker|screencast)s?\b",
 }
 
 
