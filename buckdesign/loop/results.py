@@ -62,12 +62,12 @@ class Effort:
 
     plain: int = 6
     accelerated: int = 20
-    more: int = 24
+    more: int = 18
     patience: int = 600
     window: int = 64
     steps: int = 20000
     span: float = 20.0
-    tolerance: float = 1e-9
+    tolerance: float = 5e-10
 
     def array(self) -> Floats:
         """The settings in the order that the kernel reads them, shape (8,)."""
