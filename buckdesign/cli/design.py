@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Annotated
 
 import typer
 
@@ -25,6 +25,10 @@ def design(
     output: Output = None,
     force: Force = False,
     parts: Parts = None,
+    budget: Annotated[
+        Path | None,
+        typer.Option("--budget", metavar="FILE", help="Losses at full load as a stacked bar, .svg or .png."),
+    ] = None,
     json: Json = False,
 ) -> None:
     """Design a supply: choose every part, simulate it over the range, check every limit.
@@ -42,11 +46,18 @@ def design(
     tables = tables_with(parts)
     wanted = read_requirement(requirement, tables)
     check_writable_name(target, force=force)
+    if budget is not None:
+        from buckdesign.output.plots import figure_format
+
+        figure_format(budget)
+        check_writable_name(budget, force=force)
     _note_compiling()
     result = design_supply(wanted, tables, progress=print_note)
     if result.feasible and result.design is not None:
         write_design(result.design, target, force=force)
     _print(result, target, json)
+    if budget is not None:
+        _draw(result, budget, force)
     if not result.feasible:
         raise typer.Exit(INFEASIBLE)
 
@@ -61,6 +72,19 @@ def _note_compiling() -> None:
 
     if not is_cached():
         print_note("first run: compiling the simulation, about a minute; later runs start at once")
+
+
+def _draw(result: DesignResult, budget: Path, force: bool) -> None:
+    from buckdesign.design.safe_write import write_bytes_new, write_bytes_over
+    from buckdesign.output.budget_plot import budget_figure
+    from buckdesign.output.plots import figure_bytes, figure_format
+    from buckdesign.output.simulation import heading
+
+    for point in result.corners:
+        if point.linear is not None:
+            figure = budget_figure(point, heading(point))
+            (write_bytes_over if force else write_bytes_new)(budget, figure_bytes(figure, figure_format(budget)))
+            print_note(f"written: {budget}")
 
 
 def _print(result: DesignResult, target: Path, json: bool) -> None:

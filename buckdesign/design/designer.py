@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
 from buckdesign.design.advisories import start_warnings
@@ -9,8 +11,10 @@ from buckdesign.design.attempts import Attempt, Progress, attempt
 from buckdesign.design.describing import alternatives, component_values, gathered, gathered_warnings
 from buckdesign.design.design_result import Blocking, DesignResult
 from buckdesign.design.judging import Judged
+from buckdesign.design.linear_alternative import linear_alternative
 from buckdesign.design.operated import operate_rows
 from buckdesign.design.operating import checked_points
+from buckdesign.design.operating_point import OperatingPoint
 from buckdesign.design.requirement import Requirement
 from buckdesign.design.start_up import start_from_rest
 from buckdesign.loop.parameters import COLUMN
@@ -73,7 +77,7 @@ def result_of(requirement: Requirement, found: Attempt, blocking: tuple[Blocking
     if not found.judged:
         return DesignResult(requirement=requirement, feasible=False, blocking=blocking)
     best, *others = found.judged
-    corners = tuple(checked_points(best.operated, best.resolved, requirement))
+    corners = _with_linear(best, tuple(checked_points(best.operated, best.resolved, requirement)), requirement)
     return DesignResult(
         requirement=requirement,
         feasible=best.holds,
@@ -107,6 +111,22 @@ def frequency_spread(requirement: Requirement, best: Judged) -> tuple[float, flo
 def _urgency(check: object) -> tuple[bool, float]:
     margin = getattr(check, "margin", None)
     return bool(getattr(check, "holds", True)), float("-inf") if margin is None else float(margin)
+
+
+def _with_linear(
+    best: Judged, corners: tuple[OperatingPoint, ...], requirement: Requirement
+) -> tuple[OperatingPoint, ...]:
+    """The points, with the same job done linearly beside the one at nominal supply, full load and most heat."""
+    index = max(
+        range(len(corners)),
+        key=lambda i: (
+            corners[i].load_a >= requirement.output.current_max * (1.0 - 1e-6),
+            -abs(corners[i].supply_v - requirement.supply.voltage_nominal),
+            corners[i].ambient_c,
+        ),
+    )
+    linear = linear_alternative(best.operated, best.resolved, index)
+    return (*corners[:index], replace(corners[index], linear=linear), *corners[index + 1 :])
 
 
 def _start_stress(best: Judged) -> tuple[str, ...]:

@@ -10,6 +10,7 @@ from typing import Any
 from buckdesign.design.design_result import Alternative, Blocking, DesignResult
 from buckdesign.design.losses import LOSSES
 from buckdesign.design.operating_point import OperatingPoint
+from buckdesign.output.heat_text import linear_text
 from buckdesign.output.power_up import nominal_point, power_up_text
 from buckdesign.output.simulation import checks_text, listing
 from buckdesign.output.text import Column, text_pairs, text_table
@@ -243,10 +244,16 @@ def _losses(result: DesignResult) -> str:
     ]
     names.sort(key=lambda name: -max(one.losses_w[name] for one in points))
     rows = [[name.replace("_", " "), *(f"{one.losses_w[name]:.2f}" for one in points)] for name in names]
+    shown = [sum(one.losses_w[name] for name in names) for one in points]
+    rows.append(["others", *(f"{one.total_loss_w - part:.2f}" for one, part in zip(points, shown, strict=True))])
     rows.append(["all", *(f"{one.total_loss_w:.2f}" for one in points)])
     columns = [Column(heading="losses [W]")]
     columns += [Column(heading=f"{_volts(one.supply_v)} V", right=True) for one in points]
-    return f"Losses at full load, {hot:g} °C ambient\n{text_table(columns, rows)}"
+    text = f"Losses at full load, {hot:g} °C ambient\n{text_table(columns, rows)}"
+    for one in points:
+        if one.linear is not None:
+            text += f"\nAt {_volts(one.supply_v)} V: {linear_text(one.linear)}"
+    return text
 
 
 def _temperatures(result: DesignResult) -> str:
