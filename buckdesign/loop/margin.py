@@ -48,28 +48,42 @@ def static_current(row: Array, c: Array) -> float:
 
 
 @compiled
-def _unstable(c: Array, current: float, gain: float, inductance: float, share: float) -> bool:
-    """Whether the active-mode Jacobian with feedback reduced to ``share`` has an eigenvalue of positive real part.
-
-    States scaled: i_L, v_C, i_R, v_H; characteristic polynomial by Faddeev-LeVerrier, Hurwitz test.
-    """
-    a = active_jacobian(c, current, gain, inductance, share)
+def _characteristic(a: Array, p: Array) -> None:
+    """Coefficients of the characteristic polynomial of a 4 x 4 matrix, highest power first (Faddeev-LeVerrier)."""
     n = 4
-    p = np.empty(5)
     p[0] = 1.0
     work = np.zeros((n, n))
+    product = np.zeros((n, n))
     for k in range(1, n + 1):
         for i in range(n):
             work[i, i] += p[k - 1]
-        work = a @ work
+        for i in range(n):
+            for j in range(n):
+                total = 0.0
+                for m in range(n):
+                    total += a[i, m] * work[m, j]
+                product[i, j] = total
         trace = 0.0
         for i in range(n):
-            trace += work[i, i]
+            trace += product[i, i]
+            for j in range(n):
+                work[i, j] = product[i, j]
         p[k] = -trace / k
-    for k in range(1, 5):
-        if p[k] <= 0.0:
-            return True
-    return not (p[1] * p[2] * p[3] > p[3] * p[3] + p[1] * p[1] * p[4])
+
+
+@compiled
+def _unstable(without: Array, whole: Array, share: float) -> bool:
+    """Whether the active mode with a ``share`` of the feedback has an eigenvalue of positive real part (Hurwitz).
+
+    The feedback stands in one row of the Jacobian, so that the coefficients are straight lines in its share.
+    """
+    p_1 = without[1] + share * (whole[1] - without[1])
+    p_2 = without[2] + share * (whole[2] - without[2])
+    p_3 = without[3] + share * (whole[3] - without[3])
+    p_4 = without[4] + share * (whole[4] - without[4])
+    if p_1 <= 0.0 or p_2 <= 0.0 or p_3 <= 0.0 or p_4 <= 0.0:
+        return True
+    return not (p_1 * p_2 * p_3 > p_3 * p_3 + p_1 * p_1 * p_4)
 
 
 @compiled
@@ -135,19 +149,22 @@ def start_margin(row: Array, c: Array) -> float:
     if c[K_RHCH_INV] == 0.0:
         lag = row[P_LO] + c[K_TAU] * (c[K_RO] + c[K_SELF] * c[K_ESR])
         return gain * inductance * c[K_RH_INV] * c[K_G_INV] / lag
+    without, whole = np.empty(5), np.empty(5)
+    _characteristic(active_jacobian(c, current, gain, inductance, 0.0), without)
+    _characteristic(active_jacobian(c, current, gain, inductance, 1.0), whole)
     high = 1.0
-    while _unstable(c, current, gain, inductance, high) and high > 1e-6:
+    while _unstable(without, whole, high) and high > 1e-6:
         high *= 0.5
     if high <= 1e-6:
         return 1e6
-    while not _unstable(c, current, gain, inductance, high):
+    while not _unstable(without, whole, high):
         high *= 2.0
         if high > 1e6:
             return 0.0
     low = 0.5 * high
     for _ in range(40):
         middle = 0.5 * (low + high)
-        if _unstable(c, current, gain, inductance, middle):
+        if _unstable(without, whole, middle):
             high = middle
         else:
             low = middle

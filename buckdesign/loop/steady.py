@@ -95,6 +95,9 @@ from .orbit import (
     settle,
 )
 
+# time over which a rest point, where nothing changes, is accounted [s]
+AT_REST_SPAN = 2e-5
+
 LINEAR, STUCK, DROPOUT, OVERLOAD, CONTINUOUS, DISCONTINUOUS = range(6)
 REGIMES = ("linear", "stuck", "dropout", "overload", "continuous", "discontinuous")
 
@@ -237,7 +240,7 @@ def solve_one(row: Array, start: Array, given: bool, settings: Array, out: Array
     if cycles == 0:
         clear(a)
         x[:] = first
-        limits[1] = 1e-3 if ended == AT_REST else settings[O_SPAN] * 0.2
+        limits[1] = AT_REST_SPAN if ended == AT_REST else settings[O_SPAN] * 0.2
         limits[0] = 4.0 * settings[O_STEPS]
         if ended != AT_REST:
             classify(c, x, m, s)
