@@ -107,6 +107,10 @@ def _winding(section: ChokeSection, tables: Tables, assumptions: list[str]) -> W
         assumptions.append(
             f"{ring.name}, {material.name}: inductance factor from dimensions and permeability"
         )
+    known = [("bias law", material.bias_how), ("core loss", material.loss_how)]
+    told = "; ".join(f"{what}: {how}" for what, how in known if how)
+    if told:
+        assumptions.append(f"{material.name}, {told}")
     length, area, volume = _effective(ring)
     return WindingElement(
         ring=ring,
