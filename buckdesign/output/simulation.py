@@ -21,6 +21,9 @@ WIDTH = 100
 NOTHING = 1e-9
 """Value in SI units below which a number is rounding, and shown as 0."""
 
+DESTROYED_C = 400.0
+"""Junction temperature beyond which a number says no more than that the part is gone [degC] (own choice)."""
+
 REGIME_WORDS = {
     "linear": "linear, the regulator alone carries the load",
     "stuck": "stuck, regulates without oscillating",
@@ -163,7 +166,7 @@ def _junctions(point: OperatingPoint) -> str:
     parts = []
     for name, value in point.junction_c.items():
         unknown = "runaway" if name in lost else "not known"
-        parts.append(f"{name} {unknown if value is None else _shown(value, 'degC')}")
+        parts.append(f"{name} {unknown if value is None else _heat(value)}")
     return ", ".join(parts)
 
 
@@ -260,6 +263,13 @@ def _checked(value: float | None, check: Check) -> str:
     found, limit = check.value, check.limit
     near = found is not None and limit is not None and abs(found - limit) < 0.1 * abs(limit)
     return _shown(value, check.unit, 4 if near else 3)
+
+
+def _heat(celsius: float) -> str:
+    """A junction temperature, or that there is no junction left."""
+    if celsius > DESTROYED_C:
+        return f"destroyed (far above {_shown(DESTROYED_C, 'degC')})"
+    return _shown(celsius, "degC")
 
 
 def _shown(value: float, unit: str, digits: int = 3) -> str:
