@@ -10,11 +10,11 @@ import numpy as np
 import pytest
 
 from buckdesign.loop.parameters import COLUMN, COLUMNS, LoopParameters
-from buckdesign.loop.results import DETAILED, OUTPUTS, Start, steady_states, trajectory, waveforms
+from buckdesign.loop.results import DETAILED, OUTPUTS, Start, Waveforms, steady_states, trajectory, waveforms
 from buckdesign.physics.hysteresis import frequency_esr
 from tests.loop.circuits import SPOT
 from tests.loop.population import usual, wide
-from tests.loop.reference import Reference, Settings
+from tests.loop.reference import Reference, Run, Settings
 from tests.loop.reference_circuits import KINDS, random_circuits
 from tests.loop.reference_measures import measure
 from tests.loop.reference_model import Release
@@ -91,6 +91,7 @@ def test_the_orbit_closes_in_the_reference(index: int, circuits: list[tuple[Loop
     section = begin.states[0]
     theirs = circuit.run((section.copy(), _mode_at(circuit, section)), 1.0, cycles=period, keep=True)
     assert period / found.column("frequency_hz")[0] == pytest.approx(theirs.cycle_times[-1], rel=1e-5)
+    _compare_waveforms(circuit, theirs, waveforms(parameters, start=section[:5], cycles=period, per_step=6))
     measured = measure(circuit, theirs)
     assert measured.mean_output == pytest.approx(found.column("output_voltage_v")[0], rel=1e-5)
     ripple = found.column("output_max_v")[0] - found.column("output_min_v")[0]
@@ -102,6 +103,23 @@ def test_the_orbit_closes_in_the_reference(index: int, circuits: list[tuple[Loop
     assert measured.energies["switching"] / measured.duration == pytest.approx(
         found.column("transistor_switching_w")[0], rel=1e-4, abs=1e-6
     )
+
+
+def _compare_waveforms(circuit: Reference, run: Run, ours: Waveforms) -> None:
+    """Choke current, output and regulator current at our samples, to 1e-4 of their range."""
+    time = ours.column("time_s")
+    ends = np.array([segment.begin + segment.length for segment in run.segments])
+    # not at the events themselves, where the node jumps between two samples of one instant
+    inner = [i for i, t in enumerate(time) if np.abs(ends - t).min() > 1e-10 and 1e-10 < t < ends[-1]]
+    theirs = np.empty((len(inner), 3))
+    for row, i in enumerate(inner):
+        segment = run.segments[int(np.searchsorted(ends, time[i]))]
+        at = circuit.point(segment.mode, segment.solution(time[i] - segment.begin).tolist())
+        theirs[row] = at.choke, at.output, at.regulator
+    names = ("choke_current_a", "output_voltage_v", "regulator_current_a")
+    found = np.column_stack([ours.column(name)[inner] for name in names])
+    assert len(inner) > 30
+    assert (np.abs(found - theirs).max(axis=0) < 1e-4 * np.ptp(theirs, axis=0)).all()
 
 
 def _mode_at(circuit: Reference, state: np.ndarray) -> object:
