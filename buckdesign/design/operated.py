@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from buckdesign.design.elements import ResolvedDesign
-from buckdesign.design.heat_paths import ways_of
+from buckdesign.design.heat_paths import Ways, ways_of
 from buckdesign.design.losses import (
     LOSSES,
     Floats,
@@ -277,6 +277,8 @@ def operate_rows(
     effort: Effort = STUDY,
     start: Start = Start.OPERATING,
     jobs: int | None = None,
+    data: LossData | None = None,
+    ways: Ways | None = None,
 ) -> Operated:
     """Operating points of many designs, given as rows of loop parameters.
 
@@ -296,6 +298,9 @@ def operate_rows(
         Where each trajectory begins.
     jobs : int, optional
         Threads; all processors by default.
+    data, ways : LossData, Ways, optional
+        What losses and temperatures depend on outside the rows, one entry a point, where it differs from what
+        the designs say.
 
     Returns
     -------
@@ -313,26 +318,28 @@ def operate_rows(
         raise ValueError(f"{len(designs)} designs for {len(rows)} rows")
     own = [one.heat.ambient_c for one in designs] if ambient_c is None else ambient_c
     ambient = np.broadcast_to(np.asarray(own, dtype=float), (len(rows),)).copy()
-    data = loss_data(designs)
+    data = loss_data(designs) if data is None else data
 
     is_single = effort.more > STUDY.more
 
     def run(
-        some: Floats, starts: Floats | None, is_irregular: NDArray[np.bool_]
+        some: Floats, starts: Floats | None, is_irregular: NDArray[np.bool_], tangents: Floats
     ) -> SteadyStates:
+        known = None if is_single else tangents
         if starts is None:
-            window = effort.window if electrical_only else min(effort.window, FIRST_WINDOW)
-            return steady_states(some, start=start, effort=replace(effort, window=window), jobs=jobs)
+            first = replace(effort, window=min(effort.window, FIRST_WINDOW))
+            return steady_states(some, start=start, effort=first, jobs=jobs, tangents=known)
         near = replace(effort, plain=min(effort.plain, NEAR_CYCLES))
         if is_single or not is_irregular.any():
-            return steady_states(some, starts=starts, effort=near, jobs=jobs)
-        return _run_again(some, starts, is_irregular, near, jobs)
+            return steady_states(some, starts=starts, effort=near, jobs=jobs, tangents=known)
+        return _run_again(some, starts, is_irregular, near, jobs, tangents)
 
     if electrical_only:
-        settled = _without_heat(rows, run(rows, None, np.zeros(len(rows), dtype=bool)))
+        settled = _without_heat(rows, steady_states(rows, start=start, effort=effort, jobs=jobs))
     else:
+        paths = ways_of(designs) if ways is None else ways
         settled = settle_temperatures(
-            rows, run, data, ways_of(designs), ambient, SETTLED_SINGLE if is_single else SETTLED
+            rows, run, data, paths, ambient, SETTLED_SINGLE if is_single else SETTLED
         )
     return Operated(
         rows=settled.rows,
@@ -347,15 +354,21 @@ def operate_rows(
 
 
 def _run_again(
-    rows: Floats, starts: Floats, is_irregular: NDArray[np.bool_], near: Effort, jobs: int | None
+    rows: Floats,
+    starts: Floats,
+    is_irregular: NDArray[np.bool_],
+    near: Effort,
+    jobs: int | None,
+    tangents: Floats,
 ) -> SteadyStates:
     """Steady states near those before; what was irregular is only averaged, unless it looks regular."""
     values, ends = np.empty((len(rows), len(OUTPUTS))), np.empty((len(rows), STATES))
 
     def put(which: NDArray[np.bool_], effort: Effort) -> None:
         if which.any():
-            found = steady_states(rows[which], starts=starts[which], effort=effort, jobs=jobs)
-            values[which], ends[which] = found.values, found.ends
+            known = tangents[which]
+            found = steady_states(rows[which], starts=starts[which], effort=effort, jobs=jobs, tangents=known)
+            values[which], ends[which], tangents[which] = found.values, found.ends, known
 
     put(~is_irregular, near)
     put(is_irregular, replace(near, accelerated=0, more=0, patience=0))

@@ -17,7 +17,7 @@ from buckdesign.design.losses import Floats, LossData
 from buckdesign.design.sections import DEVICES
 from buckdesign.design.temperatures import Balance, balance, without_leakage
 from buckdesign.loop.parameters import COLUMN
-from buckdesign.loop.results import SteadyStates
+from buckdesign.loop.results import TANGENT, SteadyStates
 
 MIXING = (-9.0, 0.95)
 """Bounds of the part of the last step that is taken back [1] (own choice: a slope between -20 and 0.9)."""
@@ -52,10 +52,10 @@ class Run(Protocol):
     """Runs the loop for some rows."""
 
     def __call__(
-        self, some: Floats, starts: Floats | None, is_irregular: NDArray[np.bool_]
+        self, some: Floats, starts: Floats | None, is_irregular: NDArray[np.bool_], tangents: Floats
     ) -> SteadyStates:
         """Steady states of the rows, from given states near their end or the usual ones; which of them were
-        irregular in the run before.
+        irregular in the run before; derivatives of their return maps, changed into those found.
         """
 
 
@@ -107,7 +107,8 @@ def settle_temperatures(
     """
     steps = _Steps(_first_guess(rows, data, ways.heat, ambient_c))
     now = parameters_at(rows, ways.hot, steps.at[:, :-1], steps.at[:, -1], ambient_c)
-    loop = run(now, None, np.zeros(len(rows), dtype=bool))
+    tangents = np.zeros((len(rows), *TANGENT))
+    loop = run(now, None, np.zeros(len(rows), dtype=bool), tangents)
     moving = np.ones(len(rows), dtype=bool)
     which = np.arange(len(rows))
     for turn in range(1, RUNS + 1):
@@ -130,8 +131,9 @@ def settle_temperatures(
         part = SteadyStates(values=part.values[moves], ends=part.ends[moves])
         there = steps.at[which]
         now[which] = parameters_at(rows[which], some.hot, there[:, :-1], there[:, -1], ambient_c[which], part)
-        again = run(now[which], loop.ends[which, :5], irregular)
-        loop.values[which], loop.ends[which] = again.values, again.ends
+        known = tangents[which]
+        again = run(now[which], loop.ends[which, :5], irregular, known)
+        loop.values[which], loop.ends[which], tangents[which] = again.values, again.ends, known
     last = balance(loop, rows, data, ways, ambient_c, steps.at[:, -1])
     return Settled(loop=loop, rows=now, balance=last, is_settled=~moving)
 

@@ -59,13 +59,19 @@ FROM_FREEWHEEL, FROM_EMPTY, FROM_NODE = 0, 1, 2
 
 # steps without a cycle after which a rest point is looked for, and how often
 REST_AFTER, REST_EVERY = 48, 12
+NEAR_REST_EVERY = 4
 # counters kept in the progress array
-G_STEPS, G_TIME, G_STALLED, G_DISTANCE, G_BEGAN = range(5)
-PROGRESS = 5
+G_STEPS, G_TIME, G_STALLED, G_DISTANCE, G_BEGAN, G_NEAR_REST = range(6)
+PROGRESS = 6
+# how far from its rest point, in scaled coordinates, a circuit may be that rested in nearly the same state before:
+# at once, and while it comes nearer
+NEAR, NEARING = 1e-3, 0.1
+# the static solution of the active mode is unstable, so that only a rest at a bound can be trusted; or it is stable
+REST_AT_BOUND, REST_IS_STABLE = 1.0, 2.0
 
 
 @compiled
-def _solve(a: Array, b: Array, n: int) -> bool:
+def solve_linear(a: Array, b: Array, n: int) -> bool:
     """Solve ``a x = b`` in place by elimination with pivots; false where singular."""
     for k in range(n):
         pivot = k
@@ -180,7 +186,7 @@ def rest_point(c: Array, x: Array, m: Discrete, s: Array, target: Array) -> floa
             for j in range(n):
                 jacobian[i, j] /= largest
             rhs[i] = -start[i] / largest
-        if not _solve(jacobian, rhs, n):
+        if not solve_linear(jacobian, rhs, n):
             return np.inf
         step = 0.0
         for i in range(n):
@@ -222,9 +228,12 @@ def run_cycle(c: Array, x: Array, m: Discrete, s: Array, g: Array, limits: Array
     """Run until a cycle begins, a rest point is reached or a limit is met.
 
     ``limits`` holds the largest number of steps and the largest time [s] since the last cycle began;
-    ``g`` the progress (steps, time, stalled events, last distance, how the cycle began).
+    ``g`` the progress (steps, time, stalled events, last distance, how the cycle began, whether a rest point is
+    known to be near).
     """
     target = np.empty(STATES)
+    is_near = g[G_NEAR_REST] > 0.0
+    after, every = (NEAR_REST_EVERY, NEAR_REST_EVERY) if is_near else (REST_AFTER, REST_EVERY)
     steps = 0
     elapsed = 0.0
     g[G_DISTANCE] = np.inf
@@ -258,9 +267,13 @@ def run_cycle(c: Array, x: Array, m: Discrete, s: Array, g: Array, limits: Array
             if g[G_STALLED] > 12.0:
                 nudge(c, x, m, s)
                 elapsed += 1e-12
-        if steps >= REST_AFTER and steps % REST_EVERY == 0 and not accounts:
+        if steps >= after and steps % every == 0 and not accounts:
             distance = rest_point(c, x, m, s, target)
-            if distance < 1e-7 and distance < g[G_DISTANCE]:
+            comes_nearer = distance < g[G_DISTANCE]
+            trusted = is_near and (g[G_NEAR_REST] == REST_IS_STABLE or m[M_CLAMP] != UNHELD)
+            if trusted and distance < NEARING and distance < 0.9 * g[G_DISTANCE] < np.inf:
+                distance = 0.0
+            if comes_nearer and distance < (NEAR if trusted else 1e-7):
                 x[:] = target
                 return RESTS
             g[G_DISTANCE] = distance

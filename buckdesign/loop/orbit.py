@@ -11,87 +11,29 @@ import numpy as np
 
 from .accounting import A_TIME, clear
 from .compiling import compiled
-from .constants import (
-    DISCRETES,
-    K_RHCH_INV,
-    K_SC_I,
-    K_SC_IR,
-    M_CLAMP,
-    STATES,
-    UNHELD,
-    X_IL,
-    X_IR,
-    X_VC,
-    X_VH,
-    Array,
-    Discrete,
+from .constants import DISCRETES, Array, Discrete
+from .cycles import (
+    BEGAN,
+    FROM_NODE,
+    G_BEGAN,
+    G_NEAR_REST,
+    REST_AT_BOUND,
+    REST_IS_STABLE,
+    RESTS,
+    count_period,
+    resume,
+    run_cycle,
 )
-from .cycles import BEGAN, FROM_EMPTY, FROM_NODE, G_BEGAN, PROGRESS, RESTS, count_period, resume, run_cycle
+from .following import CLOSED, follow_orbit, note_tangent
+from .return_map import DIMENSIONS, apart, derivative, return_map, section, unscale
 
-DIMENSIONS = 4
 MEMORY = 4
-CLOSED = 1e-8
 MOST_PERIOD = 12
 
 PERIODIC, IRREGULAR, AT_REST, UNSETTLED = 0, 1, 2, 3
 
 # positions in the settings array
-O_PLAIN, O_ACCELERATED, O_MORE, O_WINDOW, O_STEPS, O_SPAN, O_PATIENCE, O_TOLERANCE = range(8)
-
-
-@compiled
-def section(c: Array, x: Array, z: Array) -> None:
-    """Section coordinates of a state, scaled: (i_L, v_C, i_R, v_H)."""
-    z[0] = x[X_IL] / c[K_SC_I]
-    z[1] = x[X_VC] / 0.1
-    z[2] = x[X_IR] / c[K_SC_IR]
-    z[3] = x[X_VH]
-
-
-@compiled
-def _unscale(c: Array, z: Array, raw: Array) -> None:
-    raw[0] = z[0] * c[K_SC_I]
-    raw[1] = z[1] * 0.1
-    raw[2] = z[2] * c[K_SC_IR]
-    raw[3] = z[3]
-
-
-@compiled
-def _apart(z: Array, y: Array) -> float:
-    largest = 0.0
-    for i in range(DIMENSIONS):
-        largest = max(largest, abs(z[i] - y[i]))
-    return largest
-
-
-@compiled
-def return_map(
-    c: Array,
-    z: Array,
-    began: int,
-    held: Discrete,
-    repeats: int,
-    s: Array,
-    limits: Array,
-    y: Array,
-    end: Discrete,
-) -> int:
-    """Image of the section point ``z`` after ``repeats`` cycles in ``y``; its discrete state in ``end``.
-
-    Returns how the last cycle began, or -1 where none did.
-    """
-    x = np.zeros(STATES)
-    g = np.zeros(PROGRESS)
-    a = np.zeros(1)
-    raw = np.empty(DIMENSIONS)
-    _unscale(c, z, raw)
-    end[:] = held
-    resume(c, raw, began, x, end, s)
-    for _ in range(repeats):
-        if run_cycle(c, x, end, s, g, limits, a, False) != BEGAN:
-            return -1
-    section(c, x, y)
-    return int(g[G_BEGAN])
+O_PLAIN, O_ACCELERATED, O_MORE, O_WINDOW, O_STEPS, O_SPAN, O_PATIENCE, O_TOLERANCE, O_FOLLOW = range(9)
 
 
 @compiled
@@ -147,81 +89,15 @@ def _mix(points: Array, images: Array, kept: int, z: Array) -> None:
 
 
 @compiled
-def _spectral_radius(matrix: Array, n: int) -> float:
-    """Largest modulus of the eigenvalues, by Gelfand's formula with ten squarings."""
-    a = matrix.copy()
-    b = np.empty_like(a)
-    logarithm = 0.0
-    power = 1.0
-    for _ in range(10):
-        norm = 0.0
-        for i in range(n):
-            for j in range(n):
-                norm = max(norm, abs(a[i, j]))
-        if norm == 0.0:
-            return 0.0
-        logarithm += np.log(norm) / power
-        for i in range(n):
-            for j in range(n):
-                a[i, j] /= norm
-        for i in range(n):
-            for j in range(n):
-                total = 0.0
-                for k in range(n):
-                    total += a[i, k] * a[k, j]
-                b[i, j] = total
-        a, b = b, a
-        power *= 2.0
-    norm = 0.0
-    for i in range(n):
-        for j in range(n):
-            norm = max(norm, abs(a[i, j]))
-    if norm == 0.0:
-        return 0.0
-    return np.exp(logarithm + np.log(norm) / power)
-
-
-@compiled
-def _contracts(
-    c: Array, z: Array, began: int, held: Discrete, repeats: int, s: Array, limits: Array, image: Array
-) -> bool:
-    """Whether the return map is a contraction at its fixed point ``z``."""
-    end = np.empty(DISCRETES, np.int64)
-    y = np.empty(DIMENSIONS)
-    which = np.empty(DIMENSIONS, np.int64)
-    n = 0
-    for k in range(DIMENSIONS):
-        if began == FROM_EMPTY and (k == 0 or k == 2):
-            continue
-        if k == 2 and held[M_CLAMP] != UNHELD:
-            continue
-        if k == 3 and c[K_RHCH_INV] == 0.0:
-            continue
-        which[n] = k
-        n += 1
-    matrix = np.zeros((DIMENSIONS, DIMENSIONS))
-    moved = z.copy()
-    for j in range(n):
-        k = which[j]
-        nudge = 1e-5
-        moved[k] = z[k] + nudge
-        if return_map(c, moved, began, held, repeats, s, limits, y, end) != began:
-            return False
-        moved[k] = z[k]
-        for i in range(n):
-            matrix[i, j] = (y[which[i]] - image[which[i]]) / nudge
-    return _spectral_radius(matrix, n) < 1.0
-
-
-@compiled
 def close_orbit(
     c: Array, z: Array, began: int, held: Discrete, repeats: int, s: Array, limits: Array, most: int,
-    points: Array, images: Array, kept: int, surely: bool,
+    points: Array, images: Array, kept: int, surely: bool, tangent: Array, wanted: bool,
 ) -> bool:  # fmt: skip
     """Find a stable fixed point of the ``repeats``-fold return map, starting at ``z`` with a history of pairs.
 
     On success ``z`` and ``held`` are the section point and its discrete state. ``surely``: plain iteration
-    has been seen to contract, so that the derivative need not be looked at.
+    has been seen to contract, so that the derivative need not be looked at, unless it is ``wanted`` in
+    ``tangent``.
     """
     y = np.empty(DIMENSIONS)
     end = np.empty(DISCRETES, np.int64)
@@ -231,10 +107,13 @@ def close_orbit(
         begins = return_map(c, z, began, held, repeats, s, limits, y, end)
         if begins != began:
             return False
-        residual = _apart(y, z)
+        residual = apart(y, z)
         if residual < CLOSED:
-            if not (surely or _contracts(c, z, began, held, repeats, s, limits, y)):
-                return False
+            if not surely or wanted:
+                radius = derivative(c, z, began, held, repeats, s, limits, y, tangent[1:])
+                if not surely and not radius < 1.0:
+                    return False
+                note_tangent(tangent, repeats, began, radius)
             z[:] = y
             held[:] = end
             return True
@@ -255,7 +134,7 @@ def close_orbit(
         kept += 1
         held[:] = end
         _mix(points, images, kept, z)
-        if not (_apart(z, y) < 30.0 * residual + 1e-6):
+        if not (apart(z, y) < 30.0 * residual + 1e-6):
             z[:] = y
     return False
 
@@ -279,7 +158,7 @@ def _find_period(trail: Array, kinds: Discrete, n: int, closeness: float) -> int
         worst = 0.0
         for k in range(p):
             last, first = n - 1 - k, n - 1 - k - p
-            worst = max(worst, _apart(trail[last % 64], trail[first % 64]))
+            worst = max(worst, apart(trail[last % 64], trail[first % 64]))
             if kinds[last % 64] != kinds[first % 64]:
                 worst = np.inf
         if worst < closeness:
@@ -311,8 +190,8 @@ def _shrinks(trail: Array, kinds: Discrete, n: int, repeats: int) -> bool:
     if n < 5 or repeats > 1:
         return False
     for k in range(1, 4):
-        late = _apart(trail[(n - k) % 64], trail[(n - k - 1) % 64])
-        early = _apart(trail[(n - k - 1) % 64], trail[(n - k - 2) % 64])
+        late = apart(trail[(n - k) % 64], trail[(n - k - 1) % 64])
+        early = apart(trail[(n - k - 1) % 64], trail[(n - k - 2) % 64])
         if late > 0.75 * early or kinds[(n - k) % 64] != kinds[(n - k - 1) % 64]:
             return False
     return True
@@ -320,11 +199,12 @@ def _shrinks(trail: Array, kinds: Discrete, n: int, repeats: int) -> bool:
 
 @compiled
 def settle(
-    c: Array, x: Array, m: Discrete, s: Array, settings: Array, g: Array, started_by_itself: bool
+    c: Array, x: Array, m: Discrete, s: Array, settings: Array, g: Array, started_by_itself: bool, tangent: Array
 ) -> tuple[int, int]:
     """Bring the state ``(x, m)`` to the steady state; returns how it ended and the period in cycles.
 
     Ends at a cycle's beginning (periodic, irregular), at a rest point, or wherever the limits struck.
+    ``tangent`` is that of an orbit near by, or zeros; afterwards that of the orbit found, where it is wanted.
     """
     limits = np.empty(2)
     limits[0] = settings[O_STEPS]
@@ -344,15 +224,32 @@ def settle(
         total = plain + int(settings[O_PATIENCE])
     next_attempt = plain
     n = 0
+    wanted = settings[O_FOLLOW] > 0.0
+    near = wanted and tangent[0, 0] > 0.0
+    if wanted and tangent[0, 3] > 0.0:
+        g[G_NEAR_REST] = REST_AT_BOUND if started_by_itself else REST_IS_STABLE
+    tangent[0, 3] = 0.0
     while n < total:
         status = run_cycle(c, x, m, s, g, limits, a, False)
         if status == RESTS:
+            tangent[0, 3] = 1.0
             return AT_REST, 0
+        g[G_NEAR_REST] = 0.0
         if status != BEGAN:
             return UNSETTLED, 0
         section(c, x, trail[n % 64])
         kinds[n % 64] = int(g[G_BEGAN])
         n += 1
+        if near and n == int(tangent[0, 0]):
+            near = False
+            z[:] = trail[n - 1]
+            held[:] = m
+            if follow_orbit(c, z, kinds[n - 1], held, s, limits, tangent):
+                unscale(c, z, raw)
+                m[:] = held
+                resume(c, raw, kinds[n - 1], x, m, s)
+                return PERIODIC, n
+            tangent[0, 0] = 0.0
         if n < next_attempt:
             continue
         next_attempt = 2 * n
@@ -369,12 +266,12 @@ def settle(
         z[:] = newest
         if kept > 0:
             _mix(points, images, kept, z)
-            if not (_apart(z, newest) < 30.0 * _apart(newest, trail[(n - 1 - repeats) % 64])):
+            if not (apart(z, newest) < 30.0 * apart(newest, trail[(n - 1 - repeats) % 64])):
                 z[:] = newest
         held[:] = m
         most = int(settings[O_ACCELERATED])
-        if close_orbit(c, z, began, held, repeats, s, limits, most, points, images, kept, surely):
-            _unscale(c, z, raw)
+        if close_orbit(c, z, began, held, repeats, s, limits, most, points, images, kept, surely, tangent, wanted):
+            unscale(c, z, raw)
             m[:] = held
             resume(c, raw, began, x, m, s)
             return PERIODIC, repeats

@@ -17,7 +17,8 @@ from numpy.typing import NDArray
 
 from .accounting import A_TIME, ACCOUNTS
 from .changes import classify
-from .constants import CONSTANTS, DISCRETES, MODE_NAMES, ORDER, ROWS, STATES, derive
+from .constants import CONSTANTS, DISCRETES, MODE_NAMES, ORDER, ROWS, STATES, X_VH, derive
+from .following import TANGENT
 from .parameters import COLUMNS, LoopParameters
 from .sampling import SAMPLES, cycle_starts, record
 from .sampling import WIDTH as SAMPLE_WIDTH
@@ -69,8 +70,8 @@ class Effort:
     span: float = 20.0
     tolerance: float = 5e-10
 
-    def array(self) -> Floats:
-        """The settings in the order that the kernel reads them, shape (8,)."""
+    def array(self, *, follow: bool = False) -> Floats:
+        """The settings in the order that the kernel reads them, shape (9,)."""
         return np.array(
             [
                 self.plain,
@@ -81,6 +82,7 @@ class Effort:
                 self.span,
                 self.patience,
                 self.tolerance,
+                float(follow),
             ],
             np.float64,
         )
@@ -138,7 +140,7 @@ def _start_states(rows: Floats, start: Start) -> tuple[Floats, bool]:
 
 def steady_states(
     rows: Floats, *, start: Start = Start.OPERATING, starts: Floats | None = None, effort: Effort = STUDY,
-    jobs: int | None = None,
+    jobs: int | None = None, tangents: Floats | None = None,
 ) -> SteadyStates:  # fmt: skip
     """Steady state of every design.
 
@@ -149,11 +151,14 @@ def steady_states(
     start : Start
         Where each trajectory begins.
     starts : NDArray, optional
-        Starting states (i_L, v_C, i_R, q, v_H) instead, shape (n, 5), SI.
+        Starting states (i_L, v_C, i_R, q, v_H) instead, shape (n, 5), SI; v_H counts only where there is C_h.
     effort : Effort
         How long to look for the steady state.
     jobs : int, optional
         Threads to share the designs; all processors by default.
+    tangents : NDArray, optional
+        Derivatives of the return maps of nearly the same designs, from whose ends these start, as an earlier
+        run left them here, or zeros, shape (n, *TANGENT); changed into those of these designs.
 
     Returns
     -------
@@ -175,16 +180,18 @@ def steady_states(
         begin, given = np.ascontiguousarray(starts, dtype=np.float64), True
     out = np.empty((len(rows), WIDTH))
     ends = np.empty((len(rows), STATES))
-    settings = effort.array()
+    settings = effort.array(follow=tangents is not None)
+    kept = np.zeros((1, *TANGENT)) if tangents is None else tangents
     workers = max(1, jobs or os.cpu_count() or 1)
     if workers == 1 or len(rows) < 2:
-        solve_rows(rows, begin, given, settings, out, ends)
+        solve_rows(rows, begin, given, settings, out, ends, kept)
         return SteadyStates(values=out, ends=ends)
     size = max(1, min(256, -(-len(rows) // (4 * workers))))
 
     def share(first: int) -> None:
         part = slice(first, first + size)
-        solve_rows(rows[part], begin[part] if given else begin, given, settings, out[part], ends[part])
+        own = kept if tangents is None else kept[part]
+        solve_rows(rows[part], begin[part] if given else begin, given, settings, out[part], ends[part], own)
 
     with ThreadPoolExecutor(workers) as pool:
         list(pool.map(share, range(0, len(rows), size)))
@@ -205,6 +212,8 @@ class _Machine:
             operating_start(self.row, self.c, self.x)
         else:
             self.x[: len(start)] = start
+            if parameters.hysteresis_capacitance <= 0.0:
+                self.x[X_VH] = 0.0
         classify(self.c, self.x, self.m, self.s)
 
 

@@ -206,10 +206,13 @@ def _residual(c: Array, a: Array, first: Array, last: Array) -> float:
 
 
 @compiled
-def solve_one(row: Array, start: Array, given: bool, settings: Array, out: Array, end: Array) -> None:
+def solve_one(
+    row: Array, start: Array, given: bool, settings: Array, out: Array, end: Array, tangent: Array
+) -> None:
     """Steady state of one design; ``out`` as `OUTPUTS`, ``end`` the state at the end of the window.
 
-    ``start`` is the starting state (i_L, v_C, i_R, q, v_H) where ``given``, else the operating start is used.
+    ``start`` is the starting state (i_L, v_C, i_R, q, v_H) where ``given``, else the operating start is used;
+    ``tangent`` the derivative of the return map near by, or zeros, and then that of the orbit found.
     """
     own_c = np.empty(CONSTANTS)
     own_x = np.zeros(STATES)
@@ -226,11 +229,13 @@ def solve_one(row: Array, start: Array, given: bool, settings: Array, out: Array
     if given:
         for i in range(5):
             x[i] = start[i]
+        if row[P_CH] <= 0.0:
+            x[X_VH] = 0.0
     else:
         operating_start(row, c, x)
     classify(c, x, m, s)
     margin = start_margin(row, c)
-    ended, period = settle(c, x, m, s, settings, g, margin > 1.0)
+    ended, period = settle(c, x, m, s, settings, g, margin > 1.0, tangent)
     first = x.copy()
     cycles = 0
     if ended == PERIODIC:
@@ -265,7 +270,10 @@ def solve_one(row: Array, start: Array, given: bool, settings: Array, out: Array
 
 
 @compiled
-def solve_rows(rows: Array, starts: Array, given: bool, settings: Array, out: Array, ends: Array) -> None:
+def solve_rows(
+    rows: Array, starts: Array, given: bool, settings: Array, out: Array, ends: Array, tangents: Array
+) -> None:
     """`solve_one` over the leading axis; releases the interpreter lock, so that threads share the work."""
     for k in range(rows.shape[0]):
-        solve_one(rows[k], starts[k if given else 0], given, settings, out[k], ends[k])
+        tangent = tangents[k if tangents.shape[0] > 1 else 0]
+        solve_one(rows[k], starts[k if given else 0], given, settings, out[k], ends[k], tangent)
