@@ -37,6 +37,7 @@ def design(
     and expect. Status 3 where the requirement can't be met: then it says which line blocks it and what would
     have to give.
     """
+    from buckdesign.design.ambient_limits import check_requirement_ambient
     from buckdesign.design.design_file import write_design
     from buckdesign.design.designer import design_supply
     from buckdesign.design.requirement import read_requirement
@@ -45,6 +46,7 @@ def design(
     target = default_target(requirement) if output is None else output
     tables = tables_with(parts)
     wanted = read_requirement(requirement, tables)
+    check_requirement_ambient(wanted, tables)
     check_writable_name(target, force=force)
     if budget is not None:
         from buckdesign.output.plots import figure_format

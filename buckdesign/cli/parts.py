@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated, Any
 
@@ -14,7 +15,7 @@ from buckdesign.errors import InputError, UnknownNameError, quoted
 if TYPE_CHECKING:
     from collections.abc import Mapping
 
-    from buckdesign.parts import Tables
+    from buckdesign.parts import Problem, Tables
 
 app = new_application(no_args_is_help=True, help="List, show and check part and core tables.")
 
@@ -28,6 +29,10 @@ _SHOWN: dict[str, tuple[str, tuple[str, ...]]] = {
     "material": ("materials", ("kind", "permeability", "saturation", "temperature_limit_c")),
 }
 """Kind of part, its dictionary in the tables, and the values that a list shows."""
+
+
+MILLIFARAD = 1e-3
+"""Capacitance from which the trade still writes microfarads [F]."""
 
 
 @app.command("list", epilog="Example: buckdesign parts list rectifier")
@@ -81,12 +86,12 @@ def check(
 ) -> None:
     """Check tables, built-in and your own.
 
-    A fault ends with status 2; what is only odd is listed.
+    A fault ends with status 2; what is only odd is listed: of your own tables where they are named, else of all.
     """
     from buckdesign.output.text import to_json
 
     tables = tables_with(files)
-    problems = tables.check()
+    problems = tables.check() if not files else _own_problems(tables, files)
     counts = {kind: len(_parts_of(tables, kind)) for kind in _SHOWN}
     if json:
         print_data(to_json({"counts": counts, "problems": problems}))
@@ -94,7 +99,15 @@ def check(
     for problem in problems:
         print_data(_ascii(str(problem)))
     print_note("; ".join(f"{kind}: {count}" for kind, count in counts.items()))
-    print_note(f"no faults, {len(problems)} remarks")
+    print_note(f"no faults, {len(problems)} {'remark' if len(problems) == 1 else 'remarks'}")
+
+
+def _own_problems(tables: Tables, files: list[Path]) -> list[Problem]:
+    """What is odd in the given files, without what is odd elsewhere."""
+    from buckdesign.parts import names_in
+
+    own = names_in(files)
+    return [one for one in tables.check() if (one.kind, one.name_key) in own]
 
 
 def _known_kind(kind: str) -> str:
@@ -107,7 +120,9 @@ def _known_kind(kind: str) -> str:
 
 def _parts_of(tables: Tables, kind: str) -> Mapping[str, Any]:
     found: Mapping[str, Any] = getattr(tables, _SHOWN[kind][0])
-    return found
+    if kind != "transistor":
+        return found
+    return {name: found[name] for name in sorted(found, key=_by_number)}
 
 
 def _find(tables: Tables, kind: str, name: str) -> Any:
@@ -140,16 +155,25 @@ def _table(known: Mapping[str, Any], kind: str) -> str:
     return _ascii(text_table(columns, rows))
 
 
+def _by_number(name: str) -> list[tuple[bool, int, str]]:
+    """Type numbers in the order of their figures: 2N905 before 2N2905, both before BD140."""
+    words = [word for word in re.split(r"([0-9]+)", name) if word]
+    return [(not word.isdigit(), int(word) if word.isdigit() else 0, word) for word in words]
+
+
 def _values(part: Any) -> list[tuple[str, str]]:
     from buckdesign.parts.fields import columns_of
 
     pairs = []
-    for name, column in columns_of(type(part)).items():
+    columns = columns_of(type(part))
+    for name, column in columns.items():
         value = getattr(part, name)
         if value is None or value == "":
             continue
         text = _cell(value, column.unit) if not column.raw_label else f"{value:g} {column.raw_label}"
-        pairs.append((_heading(name, column.unit), _ascii(text)))
+        heading = _heading(name, column.unit)
+        is_condition = column.unit == "degC" and name.removesuffix("_c") in columns
+        pairs.append((f"{heading} at" if is_condition else heading, _ascii(text)))
     return pairs
 
 
@@ -165,6 +189,8 @@ def _cell(value: Any, unit: str) -> str:
         return "-"
     if isinstance(value, str):
         return value
+    if unit == "F" and value >= MILLIFARAD:
+        return _ascii(f"{value * 1e6:g} µF")
     if unit in UNITS:
         return format_quantity(value, unit, digits=4, ascii_only=is_ascii_only())
     return f"{value:g} {unit}"

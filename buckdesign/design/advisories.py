@@ -1,4 +1,4 @@
-"""What to mind: at an operating point, with this circuit at all, and what the numbers rest on."""
+"""What to mind at an operating point and at a start, and what the numbers rest on."""
 
 from __future__ import annotations
 
@@ -7,16 +7,16 @@ from collections.abc import Sequence
 import numpy as np
 
 from buckdesign.design.checks import Limit
-from buckdesign.design.elements import CapacitorElement, ResolvedDesign
+from buckdesign.design.elements import ResolvedDesign
 from buckdesign.design.heat_paths import heat_data
 from buckdesign.design.losses import flux_density_swing, loop_losses
 from buckdesign.design.operated import Operated
-from buckdesign.design.operating_point import Transient
+from buckdesign.design.operating_point import SafeAreaBasis, Transient
 from buckdesign.design.runaway_search import runaway_ambient
+from buckdesign.design.safe_area_check import NAME as SAFE_AREA
 from buckdesign.design.sections import DEVICES
 from buckdesign.design.temperatures import device_heat, runaway_reach
 from buckdesign.loop.results import SteadyStates
-from buckdesign.physics.capacitor import tantalum_is_safe
 from buckdesign.physics.core_loss import RANGES as CORE_RANGES
 from buckdesign.physics.regulator import THERMAL_SHUTDOWN_C
 from buckdesign.physics.thermal import CORE_FAULT_C, CORE_WARNING_C
@@ -27,19 +27,6 @@ AUDIBLE = 16e3
 
 RUNAWAY_CLOSE = 2.0
 """Growth of the leakage up to runaway below which a warning is due [1] (own choice: parts differ by more)."""
-
-IGNITION_POWER = 15.0
-"""Output power above which a fault can ignite things [W] (IEC 62368-1 6.2.2, limit of PS1, from memory)."""
-
-FUSE_RATIO = (1.25, 1.6)
-"""Rating of a time-lag fuse over the input current at full load [1] (common practice, from memory)."""
-
-TOUCHABLE_V = 60.0
-"""Direct voltage above which touching is not safe [V] (IEC 62368-1 table 4, limit of ES1, from memory)."""
-
-DISCHARGE_V, DISCHARGE_C = 25.0, 25e-6
-"""Output above which a capacitor above this size discharges through the regulator [V], [F] (data sheets of
-the class, from memory)."""
 
 DRIVE_LIMITED = 0.05
 """Share of the conducting time in the active region from which the drive is too small [1] (own choice)."""
@@ -55,9 +42,6 @@ RESIDUAL_LIMIT = 1e-6
 
 STORED_SHARE = 0.01
 """Share of the input that a window may leave stored before it is worth a warning [1] (own choice)."""
-
-TOUCH_C = 60.0
-"""Surface that burns the skin within seconds [degC] (burn data of metal: 60 degC in less than 5 s)."""
 
 MODEL_ASSUMPTIONS = (
     "the collector-base charge of the transistor is neglected: switching takes about 20 % longer",
@@ -97,6 +81,7 @@ def point_warnings(
         *_core_warnings(operated, resolved, index),
         *_source_warnings(resolved),
     ]
+    found += _edge_warnings(limits, resolved, index)
     unknown = [limit.name for limit in limits if _is_unrated(limit, operated, resolved, index)]
     if unknown:
         found.append("not checked, no rating is known: " + ", ".join(unknown))
@@ -104,13 +89,30 @@ def point_warnings(
 
 
 def _is_unrated(limit: Limit, operated: Operated, resolved: ResolvedDesign, index: int) -> bool:
-    if limit.applies[index] or limit.name == "base drive" or limit.name.endswith(("life", "density")):
+    if limit.applies[index] or limit.name in ("base drive", SAFE_AREA) or limit.name.endswith(("life", "density")):
         return False
     if limit.name.startswith("input capacitor") and resolved.input_capacitor is None:
         return False
     if limit.unit == "degC":
         return False
     return bool(np.isnan(limit.limit[index]))
+
+
+def _edge_warnings(limits: Sequence[Limit], resolved: ResolvedDesign, index: int) -> list[str]:
+    """Edges that pass where only a pulse could be allowed, and no pulse is known."""
+    transistor = resolved.transistor
+    rated = transistor.collector_current is not None and transistor.collector_voltage is not None
+    area = next((limit for limit in limits if limit.name == SAFE_AREA), None)
+    if area is None or not rated or area.across is None or not np.isnan(area.limit[index]):
+        return []
+    current, voltage = (
+        format_quantity(float(value[index]), unit, ascii_only=True)
+        for value, unit in ((area.value, "A"), (area.across, "V"))
+    )
+    return [
+        f"the edges of the transistor, {current} at {voltage}, pass outside its safe area for direct current, and none "
+        "for pulses is known: compare with its data sheet"
+    ]
 
 
 def _heat_warnings(operated: Operated, resolved: ResolvedDesign, index: int) -> list[str]:
@@ -314,6 +316,7 @@ def start_warnings(transient: Transient, resolved: ResolvedDesign) -> tuple[str,
             f"at switch-on the transistor carries up to {peak:.3g} A, rated {rated:g} A: let the supply rise over "
             "some milliseconds, or take one rated for it"
         )
+    found += _area_warnings(transient)
     nominal = resolved.design.output.voltage
     if transient.peak_output_v > (1.0 + SET_VOLTAGE_BAND) * nominal:
         found.append(f"at switch-on the output overshoots to {transient.peak_output_v:.4g} V")
@@ -324,97 +327,16 @@ def start_warnings(transient: Transient, resolved: ResolvedDesign) -> tuple[str,
     return tuple(found)
 
 
-def cautions(operated: Operated, resolved: ResolvedDesign, index: int) -> tuple[str, ...]:
-    """What to mind with this circuit at all, with its own numbers.
-
-    Parameters
-    ----------
-    operated : Operated
-        Operating points of one design.
-    resolved : ResolvedDesign
-        The design.
-    index : int
-        Which point the temperatures are taken at; fuse and faults go by the worst of all points.
-
-    Returns
-    -------
-    tuple of str
-        One sentence each.
-    """
-    supply = float(operated.parameter("supply_voltage").max())
-    found = [
-        "the transistor removes the regulator's short-circuit protection: "
-        f"fuse the input ({_fuse(operated)}); "
-        f"a shorted transistor puts the whole {supply:.3g} V on the load",
-        _short_circuit(operated, index, supply),
-        *_capacitor_cautions(resolved, operated, index, supply),
-    ]
-    difference = resolved.regulator.max_difference
-    if difference is not None and supply > difference:
-        found.append(
-            f"with the output shorted the regulator sees more than the {difference:g} V that it is made for"
-        )
-    hot = [name for name in DEVICES if operated.junction(name)[index] > TOUCH_C]
-    if operated.balance.choke_c[index] > TOUCH_C:
-        hot.append("choke")
-    if hot:
-        found.append(f"hot to the touch, and its surroundings: {_listed(hot)}")
-    found += _safety(operated, resolved, index, supply)
-    margin = operated.loop.column("start_margin")[index]
-    if margin < 3.0:
-        found.append("a supply that rises slowly may leave it unsaturated at first: switch it on fast")
-    found += [
-        "a bypass capacitor at the regulator's input or adjust pin changes the loop: leave it out",
-        "low-voltage stage: whatever is on the mains side belongs to local codes and licensed practice",
-    ]
-    return tuple(found)
-
-
-def _fuse(operated: Operated) -> str:
-    current = float((operated.input_power / operated.parameter("supply_voltage")).max())
-    low, high = (format_quantity(ratio * current, "A", digits=2, ascii_only=True) for ratio in FUSE_RATIO)
-    return f"time-lag, {low} to {high} for this load"
-
-
-def _safety(operated: Operated, resolved: ResolvedDesign, index: int, supply: float) -> list[str]:
-    """Limits of safety standards that the stage passes."""
-    found = []
-    power, output = float(operated.output_power[index]), float(operated.set_voltage[index])
-    if supply > TOUCHABLE_V:
-        found.append(f"{supply:.3g} V: above {TOUCHABLE_V:g} V direct voltage is not safe to touch")
-    if power > IGNITION_POWER:
-        found.append(
-            f"{power:.0f} W can ignite things in a fault: fuse or electronic limit, "
-            "and nothing that burns close by"
-        )
-    if output > DISCHARGE_V and resolved.output_capacitor.capacitance > DISCHARGE_C:
-        found.append("output above 25 V: a diode from output to input keeps its capacitor off the regulator")
-    return found
-
-
-def _short_circuit(operated: Operated, index: int, supply: float) -> str:
-    resistor = float(operated.parameter("drive_resistance")[index])
-    path = resistor + float(operated.parameter("dropout_resistance")[index])
-    across = supply - float(operated.parameter("base_emitter")[index] + operated.parameter("dropout")[index])
-    limit = float(operated.parameter("current_limit")[index])
-    current = min(limit, max(across, 0.0) / path) if path > 0.0 else limit
-    shown = format_quantity(resistor * current * current, "W", digits=2, ascii_only=True)
-    return f"in a short circuit the drive resistor burns first: up to {shown}"
-
-
-def _capacitor_cautions(resolved: ResolvedDesign, operated: Operated, index: int, supply: float) -> list[str]:
-    found = ["electrolytics: mind polarity and rated voltage"]
-    if resolved.input_capacitor is not None:
-        found.append("the input capacitor draws an inrush: contacts and fuse must stand it")
-    output = float(operated.loop.column("output_max_v")[index])
-    sides = (("output", resolved.output_capacitor, output), ("input", resolved.input_capacitor, supply))
-    for side, capacitor, voltage in sides:
-        if _is_weak_tantalum(capacitor, voltage):
-            found.append(f"{side} capacitor: tantalum can catch fire; rate it for twice the voltage")
-    return found
-
-
-def _is_weak_tantalum(capacitor: CapacitorElement | None, voltage: float) -> bool:
-    if capacitor is None or capacitor.rated_voltage is None or capacitor.name is None:
-        return False
-    return capacitor.name.startswith("tantalum") and not tantalum_is_safe(capacitor.rated_voltage, voltage)
+def _area_warnings(transient: Transient) -> list[str]:
+    """A start outside the safe area that is known."""
+    margin = transient.safe_area_margin
+    if margin is None or margin >= 0.0:
+        return []
+    lasts = format_quantity(transient.stress_s, "s", digits=2, ascii_only=True)
+    times = f"{1.0 - margin:.2g} times"
+    if transient.safe_area_basis == SafeAreaBasis.DIRECT.value:
+        return [
+            f"at switch-on the transistor carries {times} its safe current for long, for about {lasts}: "
+            "allowed only if the pulse curves of its data sheet say so"
+        ]
+    return [f"at switch-on the transistor leaves its safe area: {times} the current allowed for about {lasts}"]

@@ -7,19 +7,18 @@ take typical values; where a data sheet guarantees less, the check takes the gua
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
-from numpy.typing import NDArray
 
 from buckdesign.design.elements import ResolvedDesign
 from buckdesign.design.heat_paths import HeatData, heat_data
 from buckdesign.design.hot_parameters import RECTIFIER, TRANSISTOR
+from buckdesign.design.limits import Limit, upper_limit
 from buckdesign.design.losses import Floats, input_ripple_rms
 from buckdesign.design.operated import Operated
 from buckdesign.design.operating_point import Check
 from buckdesign.design.ratings import RatingData, rating_data
+from buckdesign.design.safe_area_check import safe_area_limit
 from buckdesign.design.sections import DEVICES
 from buckdesign.design.temperatures import device_heat, junctions
 from buckdesign.physics.bias import flux_density
@@ -32,88 +31,8 @@ from buckdesign.units import format_quantity
 LIFE_WANTED = 8760.0
 """Life of an electrolytic below which a design is refused: a year of continuous running [h] (own choice)."""
 
-_ROUNDING = 1e-9
-
-
 REFERENCE_C = 25.0
 """Margins of temperatures are relative to the rise from here to the limit [degC], whatever the ambient."""
-
-
-@dataclass(frozen=True, kw_only=True)
-class Limit:
-    """One limit over all points.
-
-    Attributes
-    ----------
-    name, unit : str
-        What is limited; unit as in `buckdesign.units`.
-    value, limit : NDArray
-        Shape (n,); a value that is NaN where the limit applies does not hold.
-    applies : NDArray
-        Where the limit applies and is known, shape (n,).
-    is_upper : bool
-        Whether the value must stay below.
-    room : NDArray or None
-        Distance to the limit, positive where it holds; between value and limit where None.
-    span : NDArray or None
-        What the margin is relative to; the limit itself where None.
-    typical : NDArray or None
-        The value with typical parts, where `value` takes guaranteed ones.
-    note : str
-        What a reader has to know.
-    note_unknown : str
-        What NaN stands for.
-    """
-
-    name: str
-    unit: str
-    value: Floats
-    limit: Floats
-    applies: NDArray[np.bool_]
-    is_upper: bool = True
-    room: Floats | None = None
-    span: Floats | None = None
-    typical: Floats | None = None
-    note: str = ""
-    note_unknown: str = ""
-
-    @property
-    def margin(self) -> Floats:
-        """Relative distance to the limit, positive where it holds [1], shape (n,)."""
-        room = self.limit - self.value if self.is_upper else self.value - self.limit
-        if self.room is not None:
-            room = self.room
-        span = np.abs(self.limit if self.span is None else self.span)
-        return room / np.where(span > 0.0, span, 1.0)
-
-    @property
-    def holds(self) -> NDArray[np.bool_]:
-        """Whether it holds, also where it does not apply, shape (n,)."""
-        return ~self.applies | (self.margin >= -_ROUNDING)
-
-    def at(self, index: int, where: str) -> Check:
-        """The check of one point."""
-        value = _finite(self.value[index])
-        note = self.note_unknown if value is None else self.note
-        if self.typical is not None and value is not None:
-            typical = float(self.typical[index])
-            if np.isfinite(typical) and abs(typical - value) > 5e-3 * abs(value):
-                shown = format_quantity(typical, self.unit, ascii_only=True)
-                note = f"{note}; typical {shown}" if note else f"typical {shown}"
-        return Check(
-            name=self.name,
-            value=value,
-            limit=_finite(self.limit[index]),
-            margin=None if value is None else _finite(self.margin[index]),
-            holds=bool(self.holds[index]),
-            where=where,
-            note=note,
-            unit=self.unit,
-        )
-
-
-def _finite(value: Any) -> float | None:
-    return float(value) if np.isfinite(value) else None
 
 
 def part_limits(operated: Operated, resolved: ResolvedDesign | Sequence[ResolvedDesign]) -> list[Limit]:
@@ -136,6 +55,7 @@ def part_limits(operated: Operated, resolved: ResolvedDesign | Sequence[Resolved
     hottest = hottest_piece_at(operated, rating, heat)
     return [
         *_transistor_limits(operated, rating),
+        safe_area_limit(operated, rating),
         *_rectifier_limits(operated, rating, hottest[0]),
         *_regulator_limits(operated, rating),
         *_capacitor_limits(operated, "output", rating.output),
@@ -145,19 +65,13 @@ def part_limits(operated: Operated, resolved: ResolvedDesign | Sequence[Resolved
     ]
 
 
-def _upper(name: str, unit: str, value: Floats, limit: Floats, note: str = "", **more: Any) -> Limit:
-    return Limit(
-        name=name, unit=unit, value=value, limit=limit, applies=np.isfinite(limit), note=note, **more
-    )
-
-
 def _transistor_limits(operated: Operated, rating: RatingData) -> list[Limit]:
     loop = operated.loop
     drop = operated.parameter("threshold") + operated.parameter("slope") * loop.column("rectifier_max_a")
     voltage = operated.parameter("supply_voltage") + np.where(loop.column("rectifier_max_a") > 0.0, drop, 0.0)
     return [
-        _upper("collector voltage", "V", voltage, rating.collector_voltage),
-        _upper("collector current", "A", loop.column("collector_max_a"), rating.collector_current),
+        upper_limit("collector voltage", "V", voltage, rating.collector_voltage),
+        upper_limit("collector current", "A", loop.column("collector_max_a"), rating.collector_current),
         _base_drive(operated, rating),
     ]
 
@@ -226,8 +140,8 @@ def _rectifier_limits(operated: Operated, rating: RatingData, share: Floats) -> 
     current = loop.column("rectifier_mean_a")
     parallel = bool((rating.pieces > 1.0).any())
     return [
-        _upper("rectifier reverse voltage", "V", loop.column("reverse_max_v"), rating.reverse_voltage),
-        _upper(
+        upper_limit("rectifier reverse voltage", "V", loop.column("reverse_max_v"), rating.reverse_voltage),
+        upper_limit(
             "rectifier current",
             "A",
             share,
@@ -242,16 +156,16 @@ def _regulator_limits(operated: Operated, rating: RatingData) -> list[Limit]:
     loop = operated.loop
     in_base = np.square(rating.base_emitter_max) / operated.parameter("base_resistance")
     return [
-        _upper("regulator difference", "V", loop.column("regulator_difference_max_v"), rating.max_difference),
-        _upper(
+        upper_limit("regulator difference", "V", loop.column("regulator_difference_max_v"), rating.max_difference),
+        upper_limit(
             "regulator current",
             "A",
             loop.column("regulator_max_a"),
             rating.current_limit_min,
             "against the guaranteed current limit",
         ),
-        _upper("drive resistor power", "W", operated.balance.losses["drive_resistor"], rating.rdrive_power),
-        _upper("base-emitter resistor power", "W", in_base, rating.rbe_power, "transistor always driven"),
+        upper_limit("drive resistor power", "W", operated.balance.losses["drive_resistor"], rating.rdrive_power),
+        upper_limit("base-emitter resistor power", "W", in_base, rating.rbe_power, "transistor always driven"),
     ]
 
 
@@ -268,8 +182,8 @@ def _capacitor_limits(operated: Operated, side: str, rating: Floats) -> list[Lim
     expected = electrolytic_life(life, life_c, hot)
     timed = np.isfinite(life) & np.isfinite(life_c)
     return [
-        _upper(f"{side} capacitor voltage", "V", peak, voltage),
-        _upper(f"{side} capacitor ripple current", "A", ripple, ripple_rated, "rms"),
+        upper_limit(f"{side} capacitor voltage", "V", peak, voltage),
+        upper_limit(f"{side} capacitor ripple current", "A", ripple, ripple_rated, "rms"),
         Limit(
             name=f"{side} capacitor life",
             unit="h",
@@ -377,3 +291,15 @@ def worst_checks(limits: Sequence[Limit], operated: Operated) -> tuple[Check, ..
         index = int(np.argmin(margin))
         found.append(limit.at(index, where_text(operated, index)))
     return tuple(found)
+
+
+__all__ = [
+    "LIFE_WANTED",
+    "REFERENCE_C",
+    "Limit",
+    "checks_at",
+    "hottest_piece_at",
+    "part_limits",
+    "where_text",
+    "worst_checks",
+]

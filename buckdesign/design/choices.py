@@ -13,7 +13,7 @@ from typing import Generic, TypeVar
 
 from buckdesign.design.elements import RectifierElement, RegulatorElement, TransistorElement
 from buckdesign.design.requirement import Requirement
-from buckdesign.design.resolve import _regulator
+from buckdesign.design.resolve import resolve_regulator
 from buckdesign.design.resolve_semiconductors import resolve_rectifier, resolve_transistor
 from buckdesign.design.sections import RectifierSection, RegulatorSection, TransistorSection
 from buckdesign.design.sizing import PEAK_OVER_MEAN, base_resistors, drive_headroom, regulator_current_needed
@@ -169,7 +169,7 @@ def regulator_choices(requirement: Requirement, tables: Tables) -> Selection[Reg
     preferred = requirement.prefer.regulator
     found = []
     for name in _names(preferred, tables.regulators):
-        element = _regulator(RegulatorSection(part=name), tables)
+        element = resolve_regulator(RegulatorSection(part=name), tables)
         difference = highest_supply(requirement) - requirement.output.voltage
         musts = _lack(
             "regulator", name, "largest input-output difference", "V", difference, element.max_difference

@@ -8,8 +8,8 @@ from pathlib import Path
 from typing import Any
 
 from buckdesign.design.design_checks import check_design
-from buckdesign.design.keys import QuantityKey
-from buckdesign.design.requirement import Requirement, read_requirement_section
+from buckdesign.design.keys import Key, QuantityKey
+from buckdesign.design.requirement import Requirement, read_requirement_section, section_keys
 from buckdesign.design.safe_write import write_text_new, write_text_over
 from buckdesign.design.schema import Reading, SectionKey, read_section, section_tree, table
 from buckdesign.design.sections import (
@@ -115,18 +115,18 @@ def design_keys() -> tuple[str, ...]:
     tuple of str
         Dotted names in the order of the file format.
     """
-    return tuple(_all_keys(Design, ""))
+    return tuple(keyed_design())
 
 
-def _all_keys(section: type[Any], prefix: str) -> list[str]:
-    found: list[str] = []
-    for member in fields(section):
-        key = member.metadata.get("key")
-        if isinstance(key, SectionKey):
-            found += _all_keys(key.section, f"{prefix}{member.name}.")
-        elif key is not None:
-            found.append(prefix + member.name)
-    return found
+def keyed_design() -> dict[str, Key]:
+    """All keys of a design file with what each may hold, without those of the carried requirement.
+
+    Returns
+    -------
+    dict
+        `Key` by dotted name, in the order of the file format.
+    """
+    return section_keys(Design)
 
 
 def read_design(path: Path, tables: Tables | None = None) -> Design:

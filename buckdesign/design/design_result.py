@@ -9,6 +9,7 @@ from typing import Any
 
 from buckdesign.design.design_file import Design
 from buckdesign.design.elements import ResolvedDesign
+from buckdesign.design.heat_sinks import HeatSinks
 from buckdesign.design.operating_point import Check, OperatingPoint
 from buckdesign.design.requirement import Requirement
 
@@ -109,6 +110,8 @@ class DesignResult:
         regulator's output inductance at both ends of its band, the largest uncertainty of all [Hz].
     values : Mapping
         Every chosen component value; units in the keys.
+    heat_sinks : HeatSinks or None
+        What each device and the common sink need over the range.
     warnings, cautions, assumptions : tuple of str
         What to mind, and what the numbers rest on.
     """
@@ -123,6 +126,7 @@ class DesignResult:
     alternatives: tuple[Alternative, ...] = ()
     frequency_spread_hz: tuple[float, float] = (0.0, 0.0)
     values: Mapping[str, Any] = field(default_factory=dict)
+    heat_sinks: HeatSinks | None = None
     warnings: tuple[str, ...] = ()
     cautions: tuple[str, ...] = ()
     assumptions: tuple[str, ...] = ()
@@ -148,6 +152,7 @@ class DesignResult:
             "frequency_spread_hz": list(self.frequency_spread_hz),
             "corners": [point.to_dict() for point in self.corners],
             "checks": [check.to_dict() for check in self.checks],
+            "heat_sinks": None if self.heat_sinks is None else self.heat_sinks.to_dict(),
             "alternatives": [one.to_dict() for one in self.alternatives],
             "warnings": list(self.warnings) + list(self.cautions),
             "assumptions": list(self.assumptions),

@@ -10,6 +10,7 @@ from buckdesign.design.advisories import start_warnings
 from buckdesign.design.attempts import Attempt, Progress, attempt
 from buckdesign.design.describing import alternatives, component_values, gathered, gathered_warnings
 from buckdesign.design.design_result import Blocking, DesignResult
+from buckdesign.design.heat_sinks import worst_heat_sinks
 from buckdesign.design.judging import Judged
 from buckdesign.design.linear_alternative import linear_alternative
 from buckdesign.design.operated import operate_rows
@@ -89,6 +90,7 @@ def result_of(requirement: Requirement, found: Attempt, blocking: tuple[Blocking
         alternatives=tuple(alternatives(requirement, best, others)),
         frequency_spread_hz=frequency_spread(requirement, best),
         values=component_values(best),
+        heat_sinks=worst_heat_sinks(best.operated, best.resolved),
         warnings=_start_stress(best) + gathered_warnings(corners) + _notes(best),
         cautions=gathered([point.cautions for point in corners]),
         assumptions=gathered([point.assumptions for point in corners]),

@@ -96,8 +96,10 @@ class TransistorElement:
         Collector over base current at which the saturation voltage holds [1]; None: given as it is.
     leakage, leakage_at_c : float
         Collector leakage [A] at a junction temperature [degC].
-    breakdown_voltage, breakdown_current : float or None
-        A point of the second-breakdown limit [V], [A].
+    breakdown_voltage, breakdown_current, breakdown_far_voltage, breakdown_far_current : float or None
+        Points of the second-breakdown limit [V], [A].
+    pulse_voltage, pulse_current, pulse_duration : float or None
+        A point of the safe area for one pulse [V], [A], [s].
     collector_voltage, collector_current : float or None
         Ratings [V], [A].
     junction_case, junction_limit_c : float or None
@@ -121,6 +123,11 @@ class TransistorElement:
     leakage_at_c: float
     breakdown_voltage: float | None
     breakdown_current: float | None
+    breakdown_far_voltage: float | None
+    breakdown_far_current: float | None
+    pulse_voltage: float | None
+    pulse_current: float | None
+    pulse_duration: float | None
     collector_voltage: float | None
     collector_current: float | None
     junction_case: float | None

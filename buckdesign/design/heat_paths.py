@@ -44,7 +44,7 @@ class HeatData:
 
 def heat_data(resolved: Sequence[ResolvedDesign]) -> HeatData:
     """`HeatData` of the design of each point."""
-    return data_by_point(resolved, _heat_record, HeatData)
+    return data_by_point(resolved, _heat_record, HeatData, ("heat", *DEVICES))
 
 
 def _heat_record(resolved: ResolvedDesign) -> dict[str, Any]:

@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import math
-from dataclasses import asdict, dataclass
+from dataclasses import asdict, dataclass, replace
 from typing import Any
 
 import numpy as np
 
+from buckdesign.design.checks import where_text
 from buckdesign.design.elements import HeatPath, ResolvedDesign
+from buckdesign.design.heat_paths import heat_data
 from buckdesign.design.hot_parameters import RECTIFIER, hot_data, parameters_at
 from buckdesign.design.losses import (
     LEAKAGE_CEILING_C,
@@ -34,6 +36,15 @@ FREE_AIR = {"TO-3": 35.0, "TO-220": 60.0, "TO-126": 90.0, "TO-39": 175.0}
 
 LARGE_RESISTANCE = 150.0
 """Resistance that any case or lead has by itself [K/W] (own choice): no plate is worth drawing for more."""
+
+LARGEST_RISE = 150.0
+"""Rise of a fitted sink beyond which the size of a plate for it says nothing [K] (own choice)."""
+
+CANDIDATES = 3
+"""Points looked at for each device, those that ask for most with the losses of the moment [1] (own choice)."""
+
+ASSUMED_LIMIT_C = 150.0
+"""Junction limit by which points are ranked where none is known [degC] (own choice)."""
 
 TINY_HEAT = 1e-3
 """Heat below which no sink is worth a thought [W] (own choice)."""
@@ -76,6 +87,8 @@ class DeviceSink:
         Whether it exceeds its limit in free air.
     plate : Plate or None
         For the sink it needs; None where it needs none or none is good enough.
+    where : str
+        Operating point.
     """
 
     heat_w: float
@@ -84,6 +97,7 @@ class DeviceSink:
     without_sink_c: float | None
     needs_sink: bool | None
     plate: Plate | None
+    where: str = ""
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -104,8 +118,10 @@ class SharedSink:
         The device that asks for it.
     sink_c : float
         Temperature of the fitted sink [degC].
-    plate : Plate or None
-        A plate of the resistance that is needed.
+    plate, fitted_plate : Plate or None
+        Plates of the resistance that is needed, and of the one that is fitted.
+    where : str
+        Operating point.
     """
 
     devices: tuple[str, ...]
@@ -115,6 +131,8 @@ class SharedSink:
     limited_by: str | None
     sink_c: float
     plate: Plate | None
+    fitted_plate: Plate | None = None
+    where: str = ""
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -176,7 +194,55 @@ def heat_sinks(operated: Operated, resolved: ResolvedDesign, index: int) -> Heat
         for place, name in enumerate(DEVICES)
     }
     together = dict(zip(DEVICES, (float(power) for power in hot[-1]), strict=True))
-    return HeatSinks(**found, shared=_shared(resolved, now, together, ambient))
+    shared = _shared(resolved, now, together, ambient)
+    where = where_text(operated, index)
+    return HeatSinks(
+        **{name: replace(one, where=where) for name, one in found.items()},
+        shared=None if shared is None else replace(shared, where=where),
+    )
+
+
+def worst_heat_sinks(operated: Operated, resolved: ResolvedDesign) -> HeatSinks:
+    """Heat sinks of a design over all its operating points, each device where it asks for most.
+
+    Parameters
+    ----------
+    operated : Operated
+        Operating points of one design, with temperatures.
+    resolved : ResolvedDesign
+        The design.
+
+    Returns
+    -------
+    HeatSinks
+        At the highest ambient, where a junction at its limit has least room (its own heat there hardly depends on
+        the ambient): each device, and the common sink, at the point that asks for the smallest resistance.
+    """
+    heat = device_heat(operated.balance.losses)
+    heat[:, RECTIFIER] += operated.balance.losses["rectifier_leakage"]
+    limits = np.array([_limit(resolved, name) for name in DEVICES])
+    room = np.where(np.isnan(limits), ASSUMED_LIMIT_C, limits) - operated.ambient_c[:, None]
+    left = room - np.nan_to_num(heat_data([resolved]).own[0]) * heat
+    groups = [[place] for place in range(len(DEVICES))]
+    sharing = [place for place, name in enumerate(DEVICES) if getattr(resolved.heat, name).is_shared]
+    groups += [sharing] if sharing else []
+    hot = np.flatnonzero(operated.ambient_c >= operated.ambient_c.max())
+    tried: set[int] = set()
+    for group in groups:
+        need = left[:, group].min(axis=1) / np.maximum(heat[:, group].sum(axis=1), TINY_HEAT)
+        ranked = hot[np.argsort(need[hot], kind="stable")]
+        tried.update(int(index) for index in ranked[:CANDIDATES])
+    found = [heat_sinks(operated, resolved, index) for index in sorted(tried)]
+    shared = [one.shared for one in found if one.shared is not None]
+    return HeatSinks(
+        **{name: min((getattr(one, name) for one in found), key=_demand) for name in DEVICES},
+        shared=min(shared, key=_demand) if shared else None,
+    )
+
+
+def _demand(one: DeviceSink | SharedSink) -> tuple[float, float]:
+    """Smaller where more is asked for."""
+    return math.inf if one.needed_k_per_w is None else one.needed_k_per_w, -one.heat_w
 
 
 def _limit(resolved: ResolvedDesign, name: str) -> float:
@@ -288,6 +354,7 @@ def _shared(
         limited_by=least,
         sink_c=ambient + fitted * total,
         plate=plate_for(needed, hot_total, ambient) if needed is not None and needed > 0.0 else None,
+        fitted_plate=plate_for(fitted, total, ambient) if TINY_HEAT < total < LARGEST_RISE / fitted else None,
     )
 
 

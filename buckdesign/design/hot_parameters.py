@@ -154,7 +154,8 @@ class _Flat:
 
 def hot_data(resolved: Sequence[ResolvedDesign]) -> HotData:
     """`HotData` of the design of each point."""
-    flat = data_by_point(resolved, _hot_record, _Flat)
+    depends = ("transistor", "rectifier", "output_capacitor", "input_capacitor")
+    flat = data_by_point(resolved, _hot_record, _Flat, depends)
     return HotData(
         forward_coefficient=flat.forward_coefficient,
         lifetime=flat.lifetime,

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, fields
+from operator import attrgetter
 from typing import Any, TypeVar
 
 import numpy as np
@@ -57,36 +58,50 @@ DUTY_LIMITS = (0.02, 0.98)
 Data = TypeVar("Data")
 
 
-def data_by_point(resolved: Sequence[ResolvedDesign], record: Any, made: type[Data]) -> Data:
+def data_by_point(
+    resolved: Sequence[ResolvedDesign], record: Any, made: type[Data], depends: Sequence[str] = ()
+) -> Data:
     """Values of the elements of each point's design as arrays.
 
     Parameters
     ----------
     resolved : sequence of ResolvedDesign
-        The design of each point; the same object may come again and again.
+        The design of each point; the same object, or the same elements in it, may come again and again.
     record : callable
         Gives the values of one design by name, as numbers.
     made : type
         Dataclass of arrays that has a field for each.
+    depends : sequence of str
+        The two or more attributes of a design that the record looks at, so that it is made once for designs
+        that share these; the whole design where empty.
 
     Returns
     -------
     object
         An instance of `made`, arrays of shape (n, ...).
     """
-    number: dict[int, int] = {}
+    marks = _marks(resolved, depends)
+    first: dict[Any, int] = {}
     distinct: list[ResolvedDesign] = []
-    for one in resolved:
-        if id(one) not in number:
-            number[id(one)] = len(distinct)
+    for mark, one in zip(marks, resolved, strict=True):
+        if mark not in first:
+            first[mark] = len(distinct)
             distinct.append(one)
-    index = np.array([number[id(one)] for one in resolved], dtype=np.intp)
+    index = np.array([first[mark] for mark in marks], dtype=np.intp)
     records = [record(one) for one in distinct]
     columns = {
         member.name: np.array([found[member.name] for found in records])[index]
         for member in fields(made)  # type: ignore[arg-type]
     }
     return made(**columns)
+
+
+def _marks(resolved: Sequence[ResolvedDesign], depends: Sequence[str]) -> list[Any]:
+    """Something for each design that is alike where the designs share what a record depends on."""
+    if not depends:
+        return [id(one) for one in resolved]
+    parts = attrgetter(*depends)
+    return [tuple(map(id, parts(one))) for one in resolved]
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -138,7 +153,8 @@ class LossData:
 
 def loss_data(resolved: Sequence[ResolvedDesign]) -> LossData:
     """`LossData` of the design of each point."""
-    return data_by_point(resolved, _loss_record, LossData)
+    depends = ("transistor", "rectifier", "choke", "input_capacitor")
+    return data_by_point(resolved, _loss_record, LossData, depends)
 
 
 def _loss_record(resolved: ResolvedDesign) -> dict[str, Any]:

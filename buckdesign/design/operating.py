@@ -9,8 +9,10 @@ from __future__ import annotations
 
 from dataclasses import dataclass, replace
 
-from buckdesign.design.advisories import MODEL_ASSUMPTIONS, cautions, point_warnings, start_warnings
+from buckdesign.design.advisories import MODEL_ASSUMPTIONS, point_warnings, start_warnings
+from buckdesign.design.ambient_limits import check_ambient
 from buckdesign.design.capacitor_load import capacitor_loads
+from buckdesign.design.cautions import cautions
 from buckdesign.design.checks import Limit, checks_at, part_limits
 from buckdesign.design.design_file import Design
 from buckdesign.design.elements import ResolvedDesign
@@ -199,7 +201,7 @@ def simulate(
     Raises
     ------
     InputError
-        A value is not allowed, or a part is not known.
+        A value is not allowed, such as an ambient above a junction's limit, or a part is not known.
     """
     resolved = resolve_design(design, tables)
     points = points_of(
@@ -209,6 +211,8 @@ def simulate(
         load_resistance=load_resistance,
         ambient_c=ambient_c,
     )
+    if not electrical_only:
+        check_ambient(resolved, ambient_c)
     start = Start.REST if from_rest else Start.OPERATING
     operated = operate_rows(
         rows_at(resolved, points),

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, fields
+from enum import Enum
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
@@ -48,6 +49,14 @@ class Check:
         return {member.name: getattr(self, member.name) for member in fields(self)}
 
 
+class SafeAreaBasis(Enum):
+    """Which safe area a start is held against: for long, for one pulse, or for a time between."""
+
+    DIRECT = "direct current"
+    PULSE = "pulse"
+    BETWEEN = "between pulse and direct current"
+
+
 @dataclass(frozen=True, kw_only=True)
 class Transient:
     """Start from rest: everything discharged, the supply switched on at once.
@@ -64,8 +73,13 @@ class Transient:
         Energy until then, or over the whole run where it does not settle [J].
     transistor_peak_w : float
         Largest power in the transistor [W].
+    stress_s : float
+        Length of one pulse of the transistor's peak power that has its energy [s].
     safe_area_margin : float or None
-        Distance to the transistor's safe operating area [1]; None: the area is not known.
+        Distance to the transistor's safe operating area [1]; None: its ratings are not known. Second breakdown
+        counts where it is known.
+    safe_area_basis : str or None
+        Which area that is, a value of `SafeAreaBasis`.
     """
 
     peak_choke_a: float
@@ -74,9 +88,11 @@ class Transient:
     settling_s: float | None
     transistor_energy_j: float
     transistor_peak_w: float
-    safe_area_margin: float | None
     regulator_energy_j: float
     drive_resistor_energy_j: float
+    stress_s: float = 0.0
+    safe_area_margin: float | None = None
+    safe_area_basis: str | None = None
 
     def to_dict(self) -> dict[str, Any]:
         """The transient by key."""

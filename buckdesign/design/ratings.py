@@ -8,7 +8,13 @@ from typing import Any
 
 import numpy as np
 
-from buckdesign.design.elements import CapacitorElement, RectifierElement, ResolvedDesign, WindingElement
+from buckdesign.design.elements import (
+    CapacitorElement,
+    RectifierElement,
+    ResolvedDesign,
+    TransistorElement,
+    WindingElement,
+)
 from buckdesign.design.losses import Floats, data_by_point
 from buckdesign.design.sections import DEVICES
 from buckdesign.physics.thermal import CORE_FAULT_C
@@ -22,6 +28,13 @@ class RatingData:
     ----------
     saturation_extra : NDArray
         Saturation drop at its limit over the typical one, threshold [V] and slope [ohm], shape (n, 2).
+    breakdown : NDArray
+        Points of the transistor's second-breakdown limit: voltage and current of the near one, of the far one
+        [V], [A], shape (n, 4).
+    pulse : NDArray
+        Point of its safe area for one pulse [V], [A] and the length [s], shape (n, 3).
+    transistor_case : NDArray
+        From its junction to its case [K/W].
     threshold_extra, slope_extra : NDArray
         Forward drop of a rectifier at its limit over the typical one [V], [ohm]; in parallel the first
         also counts as the spread between pieces.
@@ -41,6 +54,9 @@ class RatingData:
     gain_min: Floats
     base_emitter_max: Floats
     saturation_extra: Floats
+    breakdown: Floats
+    pulse: Floats
+    transistor_case: Floats
     reverse_voltage: Floats
     average_current: Floats
     threshold_extra: Floats
@@ -59,9 +75,12 @@ class RatingData:
     flux: Floats
 
 
+_DEPENDS = (*DEVICES, "network", "output_capacitor", "input_capacitor", "choke")
+
+
 def rating_data(resolved: Sequence[ResolvedDesign]) -> RatingData:
     """`RatingData` of the design of each point."""
-    return data_by_point(resolved, _rating_record, RatingData)
+    return data_by_point(resolved, _rating_record, RatingData, _DEPENDS)
 
 
 def _known(value: float | None) -> float:
@@ -79,6 +98,7 @@ def _rating_record(resolved: ResolvedDesign) -> dict[str, Any]:
             transistor.saturation_voltage_limit - transistor.saturation_voltage,
             transistor.saturation_resistance_limit - transistor.saturation_resistance,
         ),
+        **_safe_area_record(transistor),
         **_rectifier_record(rectifier),
         "max_difference": _known(regulator.max_difference),
         "current_limit_min": regulator.current_limit_min,
@@ -89,6 +109,17 @@ def _rating_record(resolved: ResolvedDesign) -> dict[str, Any]:
         "junction_limit": [_known(getattr(resolved, name).junction_limit_c) for name in DEVICES],
         "choke_limit": _choke_limit(resolved.choke.winding),
         "flux": _flux_record(resolved.choke.winding),
+    }
+
+
+def _safe_area_record(transistor: TransistorElement) -> dict[str, Any]:
+    near = (transistor.breakdown_voltage, transistor.breakdown_current)
+    far = (transistor.breakdown_far_voltage, transistor.breakdown_far_current)
+    pulse = (transistor.pulse_voltage, transistor.pulse_current, transistor.pulse_duration)
+    return {
+        "breakdown": tuple(map(_known, near + far)),
+        "pulse": tuple(map(_known, pulse)),
+        "transistor_case": _known(transistor.junction_case),
     }
 
 

@@ -4,14 +4,15 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field, fields, replace
 from pathlib import Path
 from typing import Any
 
-from buckdesign.design.keys import QuantityKey, SpreadKey
+from buckdesign.design.keys import Key, QuantityKey, SpreadKey
 from buckdesign.design.schema import (
     REQUIRED,
     Reading,
+    SectionKey,
     flag,
     listed,
     parts,
@@ -205,6 +206,42 @@ class Requirement:
     def tree(self) -> dict[str, Any]:
         """The requirement as it stands in a file, without what was not given."""
         return {name: content for name, content in section_tree(self, self.given, ()).items() if content}
+
+
+def requirement_keys() -> dict[str, Key]:
+    """All keys of a requirement file with what each may hold.
+
+    Returns
+    -------
+    dict
+        `Key` by dotted name, such as ``output.ripple``, in the order of the file format.
+    """
+    return section_keys(Requirement)
+
+
+def section_keys(section: type[Any], prefix: str = "") -> dict[str, Key]:
+    """The keys of a section and of the sections in it.
+
+    Parameters
+    ----------
+    section : type
+        Dataclass whose fields carry keys.
+    prefix : str
+        What stands before each name, such as ``supply.``.
+
+    Returns
+    -------
+    dict
+        `Key` by dotted name, in the order of the fields.
+    """
+    found: dict[str, Key] = {}
+    for member in fields(section):
+        key = member.metadata.get("key")
+        if isinstance(key, SectionKey):
+            found |= section_keys(key.section, f"{prefix}{member.name}.")
+        elif key is not None:
+            found[prefix + member.name] = key
+    return found
 
 
 def read_requirement(path: Path, tables: Tables | None = None) -> Requirement:

@@ -195,7 +195,8 @@ def worst_start_rows(
         lifetime at the top of their bands.
     """
     worst = rows.copy()
-    data = data_by_point(resolved, _start_record, StartData)
+    depends = ("transistor", "regulator", "design.transistor")
+    data = data_by_point(resolved, _start_record, StartData, depends)
     worst[:, COLUMN["gain"]] = data.gain
     worst[:, COLUMN["output_inductance"]] *= data.inductance_factor
     worst[:, COLUMN["charge_time"]] = data.charge_time

@@ -54,14 +54,14 @@ def resolve_design(design: Design, tables: Tables | None = None) -> ResolvedDesi
     source = design.input_capacitor
     return ResolvedDesign(
         design=design,
-        regulator=_regulator(design.regulator, known),
+        regulator=resolve_regulator(design.regulator, known),
         transistor=resolve_transistor(design.transistor, known, assumptions),
         rectifier=resolve_rectifier(design.rectifier, known, assumptions),
         choke=resolve_choke(design.choke, known, assumptions),
         network=design.network,
-        output_capacitor=_capacitor(design.output_capacitor, known),
-        input_capacitor=None if source is None else _capacitor(source, known),
-        heat=_heat_paths(design.thermal),
+        output_capacitor=resolve_capacitor(design.output_capacitor, known),
+        input_capacitor=None if source is None else resolve_capacitor(source, known),
+        heat=resolve_heat_paths(design.thermal),
         full_load=design.full_load,
         assumptions=tuple(assumptions),
     )
@@ -148,7 +148,26 @@ def own_loop_parameters(resolved: ResolvedDesign) -> LoopParameters:
     )
 
 
-def _regulator(section: RegulatorSection, tables: Tables) -> RegulatorElement:
+def resolve_regulator(section: RegulatorSection, tables: Tables) -> RegulatorElement:
+    """The regulator with every value in place.
+
+    Parameters
+    ----------
+    section : RegulatorSection
+        What the file says.
+    tables : Tables
+        Parts that it names.
+
+    Returns
+    -------
+    RegulatorElement
+        Typical values and limits.
+
+    Raises
+    ------
+    UnknownNameError
+        The part is in no table.
+    """
     part = None if section.part is None else tables.regulator(section.part)
 
     def pick(name: str, fallback: float) -> float:
@@ -208,7 +227,26 @@ def _fold_back(section: RegulatorSection, part: object) -> tuple[float, float]:
     return far, table_value(part, "current_limit_far_voltage", math.inf)
 
 
-def _capacitor(section: CapacitorSection, tables: Tables) -> CapacitorElement:
+def resolve_capacitor(section: CapacitorSection, tables: Tables) -> CapacitorElement:
+    """A capacitor with every value in place.
+
+    Parameters
+    ----------
+    section : CapacitorSection
+        What the file says.
+    tables : Tables
+        Parts that it names.
+
+    Returns
+    -------
+    CapacitorElement
+        Without a kind where the file gives the ESR itself.
+
+    Raises
+    ------
+    UnknownNameError
+        The part is in no table.
+    """
     part = None if section.part is None else tables.capacitor(section.part)
     volume = None
     if part is not None and part.diameter is not None and part.length is not None:
@@ -227,7 +265,19 @@ def _capacitor(section: CapacitorSection, tables: Tables) -> CapacitorElement:
     )
 
 
-def _heat_paths(thermal: ThermalSection) -> HeatPaths:
+def resolve_heat_paths(thermal: ThermalSection) -> HeatPaths:
+    """The ways of the heat.
+
+    Parameters
+    ----------
+    thermal : ThermalSection
+        What the file says.
+
+    Returns
+    -------
+    HeatPaths
+        Of the three devices.
+    """
     return HeatPaths(
         ambient_c=thermal.ambient,
         shared_heatsink=thermal.heatsink,

@@ -96,8 +96,7 @@ def resolve_transistor(
         saturation_forced_gain=_forced_gain(section, part),
         leakage=0.0 if part is None else table_value(part, "leakage_hot", POWER_LEAKAGE),
         leakage_at_c=table_value(part, "leakage_hot_c", POWER_LEAKAGE_C),
-        breakdown_voltage=table_value_or_none(part, "breakdown_voltage"),
-        breakdown_current=table_value_or_none(part, "breakdown_current"),
+        **_safe_area(part, assumptions),
         collector_voltage=first_known(
             section.collector_voltage, table_value_or_none(part, "collector_voltage")
         ),
@@ -107,6 +106,22 @@ def resolve_transistor(
         junction_case=first_known(section.junction_case, table_value_or_none(part, "junction_case")),
         junction_limit_c=first_known(section.junction_limit, table_value_or_none(part, "junction_limit_c")),
     )
+
+
+_AREA_POINTS = (
+    "breakdown_voltage", "breakdown_current", "breakdown_far_voltage", "breakdown_far_current",
+    "pulse_voltage", "pulse_current", "pulse_duration",
+)  # fmt: skip
+
+
+def _safe_area(part: Transistor | None, assumptions: list[str]) -> dict[str, float | None]:
+    """Points of the safe area, or a word that there are none."""
+    if part is not None and part.breakdown_voltage is None:
+        assumptions.append(
+            f"{part.name}: no second-breakdown data: only its power and current limits are checked; "
+            "compare with the safe area of its data sheet"
+        )
+    return {name: table_value_or_none(part, name) for name in _AREA_POINTS}
 
 
 def _gain_law(part: Transistor, assumptions: list[str]) -> tuple[float, float]:

@@ -2,11 +2,15 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
 from buckdesign.design.elements import ResolvedDesign
 from buckdesign.design.operated import Operated
-from buckdesign.design.operating_point import Transient
+from buckdesign.design.operating_point import SafeAreaBasis, Transient
+from buckdesign.design.ratings import rating_data
+from buckdesign.design.safe_area_check import allowed_current
 from buckdesign.loop.accounting import (
     A_COND,
     A_DRIVE,
@@ -18,7 +22,7 @@ from buckdesign.loop.accounting import (
 )
 from buckdesign.loop.parameters import LoopParameters
 from buckdesign.loop.results import Trajectory, Waveforms, trajectory, waveforms
-from buckdesign.physics.safe_area import power_limit, safe_area_margin, safe_current
+from buckdesign.physics.safe_area import DIRECT_TIME, safe_area_margin
 
 SETTLED_SHARE = 0.01
 """Part of the mean output by which it may still stray from its steady band to count as settled [1]
@@ -64,8 +68,9 @@ def start_from_rest(operated: Operated, resolved: ResolvedDesign) -> tuple[Trans
     time = recorded.column("time_s")
     until = float(time[-1]) if settling is None else settling
     run = trajectory(parameters, start=_REST, cycles=1_000_000, span=max(until, 1e-6))
-    margin = _safe_area_margin(recorded, resolved, parameters, float(operated.ambient_c[0]))
-    return _transient(recorded, run, mean, settling, parameters, margin), _shown(recorded, settling)
+    transient = _transient(recorded, run, mean, settling, parameters)
+    placed = _with_safe_area(transient, recorded, resolved, parameters, float(operated.ambient_c[0]))
+    return placed, _shown(recorded, settling)
 
 
 def _settling(recorded: Waveforms, low: float, high: float) -> float | None:
@@ -79,9 +84,8 @@ def _settling(recorded: Waveforms, low: float, high: float) -> float | None:
 
 
 def _transient(
-    recorded: Waveforms, run: Trajectory, mean: float, settling: float | None, parameters: LoopParameters,
-    margin: float | None,
-) -> Transient:  # fmt: skip
+    recorded: Waveforms, run: Trajectory, mean: float, settling: float | None, parameters: LoopParameters
+) -> Transient:
     """Peaks and energies; those of the run are exact, those of the samples reach beyond it."""
     output = recorded.column("output_voltage_v")
     reached = np.flatnonzero(output >= mean)
@@ -93,32 +97,36 @@ def _transient(
         settling_s=settling,
         transistor_energy_j=float(accounts[A_COND] + accounts[A_SWITCH]),
         transistor_peak_w=max(float(accounts[A_POWER_MAX]), _peak_power(recorded, parameters)),
-        safe_area_margin=margin,
         regulator_energy_j=float(accounts[A_REGULATOR]),
         drive_resistor_energy_j=float(accounts[A_DRIVE]),
     )
 
 
-def _safe_area_margin(
-    recorded: Waveforms, resolved: ResolvedDesign, parameters: LoopParameters, ambient_c: float
-) -> float | None:
-    """Smallest distance to the area for direct current, case at ambient; None where it is not known.
+def _with_safe_area(
+    transient: Transient, recorded: Waveforms, resolved: ResolvedDesign, parameters: LoopParameters, ambient_c: float
+) -> Transient:
+    """The transient with its smallest distance to the safe area, case at ambient.
 
-    A pulse may go further than that by an amount that no table here knows: a negative margin calls for a
-    look at the data sheet.
+    The whole start counts as one pulse of its energy at its peak power: against the area for direct current where
+    no pulse is known, else between it and that of the pulse.
     """
-    part = resolved.transistor
-    needed = (
-        part.breakdown_voltage, part.breakdown_current, part.collector_current, part.collector_voltage,
-        part.junction_case, part.junction_limit_c,
-    )  # fmt: skip
-    if any(value is None for value in needed):
-        return None
-    voltage, current, most, rated, case, limit = (float(value) for value in needed if value is not None)
-    across = parameters.supply_voltage - recorded.column("switch_node_v")
-    power = power_limit(limit, ambient_c, case)
-    allowed = safe_current(np.maximum(across, 0.0), most, rated, power, voltage, current)
-    return float(np.min(safe_area_margin(recorded.column("collector_current_a"), allowed)))
+    energy, peak = transient.transistor_energy_j, transient.transistor_peak_w
+    duration = energy / peak if peak > 0.0 else 0.0
+    across = np.maximum(parameters.supply_voltage - recorded.column("switch_node_v"), 0.0)
+    rating = rating_data([resolved])
+    allowed = allowed_current(rating, across, np.array([ambient_c]), np.array([duration]))
+    margin = float(np.min(safe_area_margin(recorded.column("collector_current_a"), allowed)))
+    pulse = resolved.transistor.pulse_duration
+    known = bool(np.isfinite(margin))
+    basis = SafeAreaBasis.DIRECT
+    if pulse is not None and duration < DIRECT_TIME:
+        basis = SafeAreaBasis.PULSE if duration <= pulse else SafeAreaBasis.BETWEEN
+    return replace(
+        transient,
+        stress_s=duration,
+        safe_area_margin=margin if known else None,
+        safe_area_basis=basis.value if known else None,
+    )
 
 
 def _peak_power(recorded: Waveforms, parameters: LoopParameters) -> float:

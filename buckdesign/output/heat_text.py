@@ -4,7 +4,8 @@ from __future__ import annotations
 
 from buckdesign.design.heat_sinks import DeviceSink, HeatSinks, Plate, SharedSink
 from buckdesign.design.linear_alternative import LinearAlternative
-from buckdesign.output.text import Column, text_table
+from buckdesign.design.touch import FAR_C
+from buckdesign.output.text import Column, signs, text_table
 from buckdesign.units import format_quantity
 
 
@@ -19,35 +20,39 @@ def linear_text(linear: LinearAlternative) -> str:
     return f"{text}; switching pays from {format_quantity(linear.pays_from_a, 'A', digits=2)} up."
 
 
-def heat_sink_text(sinks: HeatSinks) -> str:
+def heat_sink_text(sinks: HeatSinks, title: str = "Heat sinks", is_bare: bool = False) -> str:
     """What each device needs, and the common sink.
 
     Parameters
     ----------
     sinks : HeatSinks
-        Of one operating point.
+        Of one operating point, or each device at its worst.
+    title : str
+        Heading of the first column.
+    is_bare : bool
+        Whether the common sink is no more than the transistor's own case.
 
     Returns
     -------
     str
-        A table and a line.
+        A table and some lines.
     """
-    columns = [Column(heading="Heat sinks"), Column(heading="heat", right=True)]
+    devices = (
+        ("transistor", sinks.transistor), ("regulator", sinks.regulator), ("rectifier", sinks.rectifier)
+    )  # fmt: skip
+    places = len({one.where for _, one in devices}) > 1
+    columns = [Column(heading=title), Column(heading="heat", right=True)]
     columns += [Column(heading="without one", right=True), Column(heading="needs at most", right=True)]
-    rows = [
-        _row(name, one)
-        for name, one in (
-            ("transistor", sinks.transistor),
-            ("regulator", sinks.regulator),
-            ("rectifier", sinks.rectifier),
-        )
-    ]
+    columns += [Column(heading="at")] if places else []
+    rows = [_row(name, one, places) for name, one in devices]
     text = text_table([*columns, Column(heading="alone on a vertical plate")], rows)
-    return text if sinks.shared is None else f"{text}\n{_shared(sinks.shared)}"
+    if is_bare:
+        return f"{text}\nNo heat sink: the transistor's bare case suffices."
+    return text if sinks.shared is None else f"{text}\n{_shared(sinks.shared, places)}"
 
 
-def _row(name: str, one: DeviceSink) -> list[str]:
-    bare = "not known" if one.without_sink_c is None else format_quantity(one.without_sink_c, "degC")
+def _row(name: str, one: DeviceSink, places: bool) -> list[str]:
+    bare = "not known" if one.without_sink_c is None else _warm(one.without_sink_c)
     if one.needs_sink:
         bare += " fails"
     return [
@@ -55,8 +60,15 @@ def _row(name: str, one: DeviceSink) -> list[str]:
         format_quantity(one.heat_w, "W") if one.heat_w > 1e-6 else "0 W",
         bare,
         _resistance(one.needed_k_per_w, one.needs_sink),
+        *([signs(one.where)] if places else []),
         "" if one.plate is None else _plate(one.plate),
     ]
+
+
+def _warm(celsius: float) -> str:
+    if celsius > FAR_C:
+        return f"above {format_quantity(FAR_C, 'degC')}"
+    return format_quantity(celsius, "degC")
 
 
 def _resistance(value: float | None, needs: bool | None) -> str:
@@ -74,17 +86,16 @@ def _plate(plate: Plate) -> str:
     return f"{middle:.0f} mm square ({low:.0f}-{high:.0f}), bright {bright:.0f} mm"
 
 
-def _shared(shared: SharedSink) -> str:
-    fitted = format_quantity(shared.fitted_k_per_w, "K/W")
-    together = ", ".join(shared.devices)
-    text = f"Shared by {together}: {format_quantity(shared.heat_w, 'W')}, fitted {fitted}"
-    text += f" at {format_quantity(shared.sink_c, 'degC')}"
-    if shared.needed_k_per_w is None:
-        return text
-    if shared.needed_k_per_w <= 0.0:
-        return f"{text}; no sink suffices for the {shared.limited_by}"
-    needed = format_quantity(shared.needed_k_per_w, "K/W")
-    text += f", needed {needed} at most"
-    if shared.plate is None:
-        return text
-    return f"{text} (for the\n{shared.limited_by}): vertical plate {_plate(shared.plate)}"
+def _shared(shared: SharedSink, places: bool) -> str:
+    fitted, needed = format_quantity(shared.fitted_k_per_w, "K/W"), shared.needed_k_per_w
+    text = f"Shared by {', '.join(shared.devices)}: {format_quantity(shared.heat_w, 'W')}"
+    lines = [f"{text} at {signs(shared.where)}" if places else text]
+    warm = _warm(shared.sink_c)
+    plate = "" if shared.fitted_plate is None else f": vertical plate {_plate(shared.fitted_plate)}"
+    lines.append(f"fitted {fitted} at {warm}{plate}")
+    if needed is not None and needed <= 0.0:
+        lines.append(f"no sink suffices for the {shared.limited_by}")
+    elif needed is not None:
+        plate = "" if shared.plate is None else f": vertical plate {_plate(shared.plate)}"
+        lines.append(f"needed {format_quantity(needed, 'K/W')} at most, for the {shared.limited_by}{plate}")
+    return "\n  ".join(lines)

@@ -6,6 +6,7 @@ import textwrap
 
 from buckdesign.design.design_result import DesignResult
 from buckdesign.design.operating_point import OperatingPoint
+from buckdesign.output.text import signs
 from buckdesign.units import format_quantity
 
 WIDTH = 100
@@ -62,7 +63,7 @@ def power_up_text(result: DesignResult) -> str:
         f"Fuse for good: {_amperes(fuse)} slow, in the input lead.",
     ]
     lines = [
-        textwrap.fill(text, WIDTH, initial_indent=f"  {number}. ", subsequent_indent="     ")
+        textwrap.fill(signs(text), WIDTH, initial_indent=f"  {number}. ", subsequent_indent="     ")
         for number, text in enumerate(steps, start=1)
     ]
     return "\n".join(["First power-up", *lines])

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from buckdesign.output.rectifier_plots import shown_rows
 from buckdesign.output.simulation import listing
-from buckdesign.output.text import Column, text_table
+from buckdesign.output.text import Column, signs, text_table
 from buckdesign.studies.rectifier_choice import Choice
 from buckdesign.studies.rectifiers import Comparison, RectifierRow
 from buckdesign.units import format_quantity
@@ -53,15 +53,22 @@ def _cells(row: RectifierRow, is_own: bool) -> list[str]:
     losses = (row.conduction_w, row.recovery_w, row.leakage_w, row.total_w)
     margin = row.runaway_margin
     return [
-        f"{row.label} (own)" if is_own else row.label,
+        f"{row.name} (own)" if is_own else row.name,
         row.kind or "-",
         *(format_quantity(value if value >= 1e-6 else 0.0, "W") for value in losses),
         "-" if row.junction_c is None else format_quantity(row.junction_c, "degC"),
         "-" if margin is None else f"{margin:.2f}" if margin < 10.0 else "> 10",
         format_quantity(row.frequency_hz, "Hz"),
         f"{100.0 * row.efficiency:.2f} %",
-        "" if row.why_not is None else f"DROPS OUT: {row.why_not}",
+        signs(_remark(row)),
     ]
+
+
+def _remark(row: RectifierRow) -> str:
+    """Why it drops out, and what must be known before it is chosen."""
+    out = [] if row.why_not is None else [f"DROPS OUT: {row.why_not}"]
+    note = row.note or ""
+    return "; ".join([*out, *([note.replace("junction not checked", "JUNCTION NOT CHECKED")] if note else [])])
 
 
 def choice_text(choice: Choice) -> str:

@@ -8,7 +8,7 @@ from buckdesign.design.capacitor_load import CapacitorLoad
 from buckdesign.design.losses import LOSSES
 from buckdesign.design.operating_point import Check, OperatingPoint, Transient
 from buckdesign.output.heat_text import heat_sink_text, linear_text
-from buckdesign.output.text import Column, text_pairs, text_table
+from buckdesign.output.text import Column, signs, text_pairs, text_table
 from buckdesign.physics.capacitor import HOURS_PER_YEAR
 from buckdesign.units import format_quantity
 
@@ -93,7 +93,8 @@ def listing(title: str, sentences: Sequence[str]) -> str:
     import textwrap
 
     lines = [
-        textwrap.fill(one, width=WIDTH, initial_indent="  - ", subsequent_indent="    ") for one in sentences
+        textwrap.fill(signs(one), width=WIDTH, initial_indent="  - ", subsequent_indent="    ")
+        for one in sentences
     ]
     return "\n".join([title, *lines])
 
@@ -208,10 +209,19 @@ def _transient(transient: Transient) -> str:
             "transistor",
             f"{_shown(transient.transistor_energy_j, 'J')}, up to {_shown(transient.transistor_peak_w, 'W')}",
         ),
+        ("safe area", _safe_area(transient)),
         ("regulator", _shown(transient.regulator_energy_j, "J")),
         ("drive resistor", _shown(transient.drive_resistor_energy_j, "J")),
     ]
     return "Start from rest\n" + text_pairs(pairs, indent=2)
+
+
+def _safe_area(transient: Transient) -> str:
+    margin, lasts = transient.safe_area_margin, _shown(transient.stress_s, "s", 2)
+    if margin is None:
+        return "not known: no ratings of the transistor"
+    far = f"margin {100.0 * margin:+.0f} %" if margin >= 0.0 else f"{1.0 - margin:.2g} times the safe current"
+    return f"{far}, against {transient.safe_area_basis}; as one pulse of {lasts}"
 
 
 def checks_text(checks: Sequence[Check]) -> str:
@@ -225,17 +235,20 @@ def checks_text(checks: Sequence[Check]) -> str:
     Returns
     -------
     str
-        One line a check.
+        One line a check, and one more where its note does not fit beside it; the operating point of each where they
+        differ.
     """
     ordered = sorted(checks, key=lambda check: (check.holds, _order(check)))
+    is_failing = not all(check.holds for check in checks)
+    places = len({check.where for check in checks}) > 1
     rows = [
         [
             check.name,
             _checked(check.value, check),
             _checked(check.limit, check),
             "-" if check.margin is None else f"{100.0 * check.margin:+.0f} %",
-            "" if check.holds else "FAILS",
-            check.note,
+            *([] if not is_failing else [""] if check.holds else ["FAILS"]),
+            *([signs(check.where)] if places else []),
         ]
         for check in ordered
     ]
@@ -244,12 +257,26 @@ def checks_text(checks: Sequence[Check]) -> str:
         Column(heading="value", right=True),
         Column(heading="limit", right=True),
         Column(heading="margin", right=True),
-        Column(heading=""),
-        Column(heading=""),
+        *([Column(heading="")] if is_failing else []),
+        *([Column(heading="where")] if places else []),
     ]
     failing = sum(not check.holds for check in checks)
     summary = f"all {len(checks)} hold" if failing == 0 else f"{failing} of {len(checks)} fail"
-    return text_table(columns, rows) + f"\n{summary}"
+    lines = _with_notes(text_table(columns, rows), [signs(check.note) for check in ordered])
+    return "\n".join([*lines, summary])
+
+
+def _with_notes(table: str, notes: Sequence[str]) -> list[str]:
+    """The lines of a table with a note behind each row, or below it where it would get too wide."""
+    head, rule, *rows = table.split("\n")
+    widest = max(map(len, (head, rule, *rows)))
+    lines = [head, rule]
+    for row, note in zip(rows, notes, strict=True):
+        if note and widest + 2 + len(note) <= WIDTH:
+            lines.append(f"{row.ljust(widest)}  {note}")
+        else:
+            lines += [row, f"    {note}"] if note else [row]
+    return lines
 
 
 def _order(check: Check) -> float:

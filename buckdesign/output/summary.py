@@ -8,12 +8,13 @@ from pathlib import Path
 from typing import Any
 
 from buckdesign.design.design_result import Alternative, Blocking, DesignResult
+from buckdesign.design.finishing import JUNCTION_RESERVE, LEAST_SINK_RISE, SINK_LIMIT_C
 from buckdesign.design.losses import LOSSES
 from buckdesign.design.operating_point import OperatingPoint
-from buckdesign.output.heat_text import linear_text
+from buckdesign.output.heat_text import heat_sink_text, linear_text
 from buckdesign.output.power_up import nominal_point, power_up_text
 from buckdesign.output.simulation import checks_text, listing
-from buckdesign.output.text import Column, text_pairs, text_table
+from buckdesign.output.text import Column, signs, text_pairs, text_table
 from buckdesign.units import format_quantity
 
 WIDTH = 100
@@ -57,6 +58,7 @@ def design_text(result: DesignResult, target: Path | None = None) -> str:
         _behaviour(result),
         _losses(result),
         _temperatures(result),
+        *_sinks(result),
         checks_text(result.checks),
         power_up_text(result),
     ]
@@ -98,7 +100,7 @@ def _blocking(one: Blocking) -> str:
     head = f"  - {one.key} = {_measure(one.required, one.unit)}{change}"
     if one.key.startswith("prefer."):
         head = f"  - {one.key}{'' if one.relax_to is None else f' -> {one.relax_to}'}"
-    return head + "\n" + textwrap.fill(one.text, WIDTH, initial_indent="    ", subsequent_indent="    ")
+    return head + "\n" + textwrap.fill(signs(one.text), WIDTH, initial_indent="    ", subsequent_indent="    ")
 
 
 def _measure(value: float | str, unit: str) -> str:
@@ -166,7 +168,7 @@ def _capacitor(values: Mapping[str, Any], side: str) -> str:
     pieces = values.get(f"{side}_capacitors_parallel", 1)
     times = f"{pieces} x " if pieces > 1 else ""
     where = "output to ground, short leads" if side == "output" else "emitter to ground, short leads"
-    return f"{times}{name}, ESR {_shown(values[f'{side}_esr_ohm'], 'ohm')}, {where}"
+    return f"{times}{signs(name)}, ESR {_shown(values[f'{side}_esr_ohm'], 'ohm')}, {where}"
 
 
 def _heatsink(values: Mapping[str, Any]) -> str:
@@ -270,6 +272,22 @@ def _temperatures(result: DesignResult) -> str:
     return "Hottest\n" + text_pairs(pairs, indent=2)
 
 
+def _sinks(result: DesignResult) -> list[str]:
+    """What each device needs over the range, with the reserve that the chosen sink has on top."""
+    if result.heat_sinks is None:
+        return []
+    is_bare = bool(result.values["transistor_is_bare"])
+    text = heat_sink_text(result.heat_sinks, is_bare=is_bare)
+    if is_bare or result.heat_sinks.shared is None:
+        return [text]
+    reserve = (
+        f"Needs are those of the junctions' limits alone. The heat sink above leaves {JUNCTION_RESERVE:g} K to them "
+        f"and stays below {SINK_LIMIT_C:g} °C, or {LEAST_SINK_RISE:g} K above the ambient. Plates: blackened "
+        "aluminium, free on both sides, with the band of the estimate."
+    )
+    return [f"{text}\n{textwrap.fill(reserve, WIDTH)}"]
+
+
 def _where(point: OperatingPoint) -> str:
     return f"{_volts(point.supply_v)} V, {_shown(point.load_a, 'A')}, {point.ambient_c:g} °C ambient"
 
@@ -277,7 +295,7 @@ def _where(point: OperatingPoint) -> str:
 def _alternatives(alternatives: Sequence[Alternative]) -> str:
     rows = [
         [
-            one.differs,
+            signs(one.differs),
             _percent(one.efficiency),
             _shown(one.ripple_v, "V"),
             f"{_shown(one.frequency_low_hz, 'Hz')} to {_shown(one.frequency_high_hz, 'Hz')}",

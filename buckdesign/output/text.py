@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import math
+import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, fields, is_dataclass
 from enum import Enum
@@ -32,6 +33,9 @@ _PLAIN = str.maketrans(
     | {"\u2264": "<=", "\u2265": ">=", "\u2192": "->", "\u00b7": " ", "\u03b7": "eta", "\u0394": "d"}
 )
 """Micro, ohm, degree, powers, signs and dashes, spelt out."""
+
+
+_SPELT = re.compile(r"(?<=[0-9] )(?:degC|[munkMG]?ohm|u[FHAVWJCsm])\b")
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -141,6 +145,32 @@ def plain_text(text: str) -> str:
     '470 uF +- 20 %, 25 degC'
     """
     return text.translate(_PLAIN).encode("ascii", errors="replace").decode("ascii")
+
+
+def signs(text: str) -> str:
+    """The text with the signs of units behind numbers instead of their spelling, the reverse of `plain_text`.
+
+    Parameters
+    ----------
+    text : str
+        Any text.
+
+    Returns
+    -------
+    str
+        With micro, ohm and degree signs.
+
+    Examples
+    --------
+    >>> signs("470 uF at 85 degC, 2.2 kohm, ohm as a word")
+    '470 µF at 85 °C, 2.2 kΩ, ohm as a word'
+    """
+    return _SPELT.sub(lambda found: _sign(found.group()), text)
+
+
+def _sign(unit: str) -> str:
+    signed = unit.replace("degC", "°C").replace("ohm", "Ω")
+    return f"µ{signed[1:]}" if signed.startswith("u") else signed
 
 
 def to_json(value: Any) -> str:

@@ -3,7 +3,7 @@
 from buckdesign.parts.catalogue import Problem, Tables
 from buckdesign.parts.cores import InductanceFactor, LossPoint, Material, Ring
 from buckdesign.parts.kinds import Capacitor, Rectifier, Regulator, Transistor, Wire
-from buckdesign.parts.loading import KINDS, load_tables, user_folder
+from buckdesign.parts.loading import KINDS, load_tables, names_in, user_folder
 
 __all__ = [
     "KINDS",
@@ -19,5 +19,6 @@ __all__ = [
     "Transistor",
     "Wire",
     "load_tables",
+    "names_in",
     "user_folder",
 ]

@@ -10,7 +10,7 @@ from typing import TypeVar
 from buckdesign.errors import UnknownNameError
 from buckdesign.parts.cores import InductanceFactor, LossPoint, Material, Ring
 from buckdesign.parts.kinds import Capacitor, Rectifier, Regulator, Transistor, Wire
-from buckdesign.parts.names import name_key
+from buckdesign.parts.names import name_key, pair_key
 
 _Part = TypeVar("_Part")
 
@@ -38,6 +38,11 @@ class Problem:
 
     def __str__(self) -> str:
         return f"{self.kind} {self.name}: {self.text}"
+
+    @property
+    def name_key(self) -> str:
+        """The name as it is found, see `buckdesign.parts.names.name_key`; of a pair each by itself."""
+        return pair_key(*self.name.split(", "))
 
 
 @dataclass(frozen=True, kw_only=True)

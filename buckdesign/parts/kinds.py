@@ -103,7 +103,13 @@ class Transistor:
     leakage_hot, leakage_hot_c : float
         Largest collector leakage [A] at a junction temperature [degC].
     breakdown_voltage, breakdown_current : float
-        A point of the second-breakdown limit for direct current [V], [A].
+        A point of the second-breakdown limit for direct current, case at 25 degC [V], [A].
+    breakdown_far_voltage, breakdown_far_current : float
+        A second one at a higher voltage [V], [A].
+    pulse_voltage, pulse_current, pulse_duration : float
+        A point of the safe area for a single pulse of that length, case at 25 degC [V], [A], [s].
+    safe_area_how : str
+        Origin and certainty of these points.
     junction_case : float
         Thermal resistance [K/W].
     junction_limit_c : float
@@ -138,6 +144,12 @@ class Transistor:
     leakage_hot_c: float | None = quantity("degC")
     breakdown_voltage: float | None = quantity("V")
     breakdown_current: float | None = quantity("A")
+    breakdown_far_voltage: float | None = quantity("V")
+    breakdown_far_current: float | None = quantity("A")
+    pulse_voltage: float | None = quantity("V")
+    pulse_current: float | None = quantity("A")
+    pulse_duration: float | None = quantity("s")
+    safe_area_how: str = text()
     junction_case: float = quantity("K/W", required=True)
     junction_limit_c: float = quantity("degC", required=True)
     package: str = text()

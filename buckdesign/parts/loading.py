@@ -14,7 +14,7 @@ from buckdesign.parts.catalogue import Tables
 from buckdesign.parts.cores import InductanceFactor, LossPoint, Material, Ring
 from buckdesign.parts.fields import Column, columns_of
 from buckdesign.parts.kinds import Capacitor, Rectifier, Regulator, Transistor, Wire
-from buckdesign.parts.names import name_key
+from buckdesign.parts.names import name_key, pair_key
 from buckdesign.parts.reading import Row, raise_faults, read_rows
 from buckdesign.parts.rules import broken_rules
 
@@ -83,6 +83,36 @@ def load_tables(extra: Sequence[Path] = (), folder: Path | None = None) -> Table
     for path in [*_csv_files(place), *extra]:
         _merge(merged, *_read_user(path, schemas))
     return _tables(merged)
+
+
+def names_in(paths: Sequence[Path]) -> frozenset[tuple[str, str]]:
+    """The parts that stand in tables of the user.
+
+    Parameters
+    ----------
+    paths : sequence of Path
+        CSV files with parts of any kind.
+
+    Returns
+    -------
+    frozenset of tuple of str
+        Kind and name as `name_key` writes it; of inductance factors ring, material and the pair of them.
+
+    Raises
+    ------
+    TableError, FaultsError
+        If a table is wrong.
+    FileAccessError
+        If a file cannot be read.
+    """
+    schemas = {kind: columns_of(part) for kind, part in KINDS.items()}
+    found = set()
+    for path in paths:
+        kind, rows = _read_user(path, schemas)
+        for row in rows:
+            given = [row.values[column] for column in ("name", "ring", "material") if column in row.values]
+            found |= {(kind, name_key(name)) for name in given} | {(kind, pair_key(*given))}
+    return frozenset(found)
 
 
 def user_folder() -> Path:

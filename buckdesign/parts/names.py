@@ -40,5 +40,26 @@ def name_key(name: str) -> str:
     return _NUMBER.sub(lambda found: _plain(found.group()), tidy)
 
 
+def pair_key(*names: str) -> str:
+    """The form under which a pair of names is found, such as a ring and a material.
+
+    Parameters
+    ----------
+    *names : str
+        One name or two.
+
+    Returns
+    -------
+    str
+        Equal for names that mean the same.
+
+    Examples
+    --------
+    >>> pair_key("R 26.90/14.5/11.1", "Hydrogen-reduced iron 75")
+    'r 26.9/14.5/11.1, hydrogen-reduced iron 75'
+    """
+    return ", ".join(name_key(name) for name in names)
+
+
 def _plain(number: str) -> str:
     return number.rstrip("0").rstrip(".") if "." in number else number

@@ -15,7 +15,12 @@ _ORDER: dict[str, tuple[tuple[str, ...], ...]] = {
         ("current_limit_far", "current_limit"),
         ("current_limit_far_min", "current_limit_far"),
     ),
-    "transistor": (),
+    "transistor": (
+        ("breakdown_far_current", "breakdown_current"),
+        ("breakdown_voltage", "collector_voltage"),
+        ("breakdown_far_voltage", "collector_voltage"),
+        ("pulse_voltage", "collector_voltage"),
+    ),
     "rectifier": (("leakage", "leakage_hot"),),
     "capacitor": (),
     "wire": (),
@@ -28,7 +33,10 @@ _ORDER: dict[str, tuple[tuple[str, ...], ...]] = {
 
 _RISING: dict[str, tuple[tuple[str, ...], ...]] = {
     "regulator": (("current_limit_knee", "current_limit_far_voltage"),),
-    "transistor": (("gain_1_current", "gain_2_current", "gain_3_current", "gain_4_current"),),
+    "transistor": (
+        ("gain_1_current", "gain_2_current", "gain_3_current", "gain_4_current"),
+        ("breakdown_voltage", "breakdown_far_voltage"),
+    ),
     "rectifier": (
         ("forward_current_1", "forward_current_2"),
         ("forward_voltage_1", "forward_voltage_2"),
@@ -45,6 +53,9 @@ _TOGETHER: dict[str, tuple[tuple[str, ...], ...]] = {
         ("gain_3", "gain_3_current"),
         ("gain_4", "gain_4_current"),
         ("storage_time", "switching_current", "switching_base_current"),
+        ("breakdown_voltage", "breakdown_current"),
+        ("breakdown_far_voltage", "breakdown_far_current"),
+        ("pulse_voltage", "pulse_current", "pulse_duration"),
     ),
     "rectifier": (
         ("forward_voltage_2", "forward_current_2"),
@@ -59,6 +70,11 @@ _TOGETHER: dict[str, tuple[tuple[str, ...], ...]] = {
     ),
 }
 """Columns that are given all or not at all."""
+
+_NEEDS: dict[str, tuple[tuple[str, str], ...]] = {
+    "transistor": (("breakdown_far_voltage", "breakdown_voltage"),),
+}
+"""Columns that stand only beside another: the first needs the second."""
 
 
 def broken_rules(kind: str, values: Mapping[str, Any]) -> Iterator[tuple[str, object, str]]:
@@ -85,6 +101,9 @@ def broken_rules(kind: str, values: Mapping[str, Any]) -> Iterator[tuple[str, ob
         if given and len(given) < len(group):
             absent = next(name for name in group if name not in values)
             yield absent, None, f"wanted because {given[0]} is given"
+    for name, needed in _NEEDS.get(kind, ()):
+        if name in values and needed not in values:
+            yield needed, None, f"wanted because {name} is given"
 
 
 def _against_order(

@@ -6,7 +6,7 @@ from collections.abc import Mapping
 
 import numpy as np
 
-from buckdesign.physics.arrays import Ranges, Real
+from buckdesign.physics.arrays import Ranges, Real, plain
 
 RANGES: Ranges = {"ring_rise_surface_rule": {"rise": (5.0, 100.0)}}
 """Rises for which the surface rule is used (from memory)."""
@@ -19,6 +19,17 @@ CORE_WARNING_C = 85.0
 
 CORE_FAULT_C = 110.0
 """Core temperature that is refused [degC]; above the 90-100 degC in use for continuous work (own choice)."""
+
+TOUCH_TIMES = (np.inf, 60.0, 10.0, 1.0)
+"""Longest contact that each limit of `TOUCH_LIMITS_C` stands for [s]."""
+
+TOUCH_LIMITS_C: Mapping[str, tuple[float, ...]] = {
+    "metal": (48.0, 51.0, 60.0, 70.0),
+    "glass": (48.0, 56.0, 71.0, 85.0),
+    "plastic": (48.0, 60.0, 77.0, 94.0),
+}
+"""Hottest surface that may be touched for the times of `TOUCH_TIMES` [degC] (IEC 62368-1 table 38, TS1, from
+memory; it is judged at 25 degC ambient)."""
 
 INSULATOR_RESISTANCE: Mapping[str, Mapping[str, tuple[float, float]]] = {
     "TO-220": {
@@ -72,6 +83,34 @@ def junction_temperature(
     78.4
     """
     return ambient_c + power * (junction_case + case_sink + sink_ambient)
+
+
+def touch_time(surface_c: Real, limits_c: tuple[float, ...]) -> Real:
+    """Longest contact with a surface that is safe.
+
+    Parameters
+    ----------
+    surface_c : float or ndarray
+        Its temperature [degC].
+    limits_c : tuple of float
+        An entry of `TOUCH_LIMITS_C` [degC], rising.
+
+    Returns
+    -------
+    float or ndarray
+        Time [s], infinite for any, 0 for none.
+
+    References
+    ----------
+    IEC 62368-1 table 38, class TS1 (from memory).
+
+    Examples
+    --------
+    >>> touch_time(np.array([48.0, 50.0, 65.0, 71.0]), TOUCH_LIMITS_C["metal"]).tolist()
+    [inf, 60.0, 1.0, 0.0]
+    """
+    steps = np.searchsorted(np.array(limits_c), surface_c)
+    return plain(np.array([*TOUCH_TIMES, 0.0])[steps])
 
 
 def sink_resistance_needed(

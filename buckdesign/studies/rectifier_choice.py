@@ -10,6 +10,7 @@ from typing import Any, assert_never
 import numpy as np
 from numpy.typing import NDArray
 
+from buckdesign.design.ambient_limits import check_ambient
 from buckdesign.design.design_file import Design
 from buckdesign.design.losses import Floats
 from buckdesign.design.operated import Points, operate_rows, points_of, rows_at
@@ -173,6 +174,7 @@ def rectifier_choice(
     known = load_tables() if tables is None else tables
     resolved = resolve_design(design, known)
     base = points_of(resolved, supply=supply, load_current=load_current, ambient_c=ambient_c)
+    check_ambient(resolved, ambient_c)
     tried, _ = variants(design, names, parallel, known, base)
     values, points, scale = _spread(over, base, resolved.design.output.voltage)
     totals, rates = _losses(tried, points, scale, effort)

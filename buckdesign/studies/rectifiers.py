@@ -11,61 +11,29 @@ from typing import Any
 
 import numpy as np
 
+from buckdesign.design.ambient_limits import check_ambient
 from buckdesign.design.checks import Limit, hottest_piece_at, part_limits
 from buckdesign.design.design_file import Design
 from buckdesign.design.elements import ResolvedDesign
 from buckdesign.design.heat_paths import heat_data
 from buckdesign.design.losses import Floats
-from buckdesign.design.operated import Operated, Points, operate_rows, points_of, rows_at
+from buckdesign.design.operated import Operated, points_of
 from buckdesign.design.ratings import rating_data
 from buckdesign.design.resolve import resolve_design
 from buckdesign.design.runaway_search import runaway_ambient
-from buckdesign.design.sections import RectifierSection
 from buckdesign.design.temperatures import device_heat, runaway_reach
 from buckdesign.loop.results import STUDY, Effort
-from buckdesign.parts import Rectifier, Tables, load_tables
+from buckdesign.parts import Tables, load_tables
+from buckdesign.studies.rectifier_variants import (
+    PIECES,
+    STANDARD,
+    UNCHECKED,
+    Variant,
+    marked_label,
+    operate_variants,
+    variants,
+)
 from buckdesign.units import format_quantity
-
-AXIAL_FREE_AIR = 50.0
-"""Junction to ambient of an axial rectifier whose sheet gives none [K/W] (from memory: 30-60 for 1-3 A
-bodies on short leads)."""
-
-CURRENT_ROOM = 1.0
-"""Rated average current over the current that a piece carries from which a part is worth a look [1]."""
-
-PIECES = 2
-"""Most pieces in parallel that are tried unless said otherwise [1] (own choice)."""
-
-
-@dataclass(frozen=True, kw_only=True)
-class Variant:
-    """A rectifier to try.
-
-    Attributes
-    ----------
-    part : str or None
-        Name in the table; None: as the design file gives it, without a part.
-    kind : str or None
-        As in the table.
-    parallel : int
-        Pieces.
-    resolved : ResolvedDesign
-        The design with it.
-    is_own : bool
-        Whether it is the design's own.
-    """
-
-    part: str | None
-    kind: str | None
-    parallel: int
-    resolved: ResolvedDesign
-    is_own: bool
-
-    @property
-    def label(self) -> str:
-        """Such as ``2 x 1N5822``."""
-        name = self.part or "as given"
-        return name if self.parallel == 1 else f"{self.parallel} x {name}"
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -90,6 +58,8 @@ class RectifierRow:
         Whether it keeps every limit of a rectifier.
     why_not : str or None
         Which it does not keep.
+    note : str or None
+        What must be known before it is chosen: that its junction could not be checked, what was assumed.
     """
 
     part: str | None
@@ -105,16 +75,21 @@ class RectifierRow:
     frequency_hz: float
     holds: bool
     why_not: str | None
+    note: str | None = None
 
     def to_dict(self) -> dict[str, Any]:
         """The row by key."""
         return {member.name: getattr(self, member.name) for member in fields(self)}
 
     @property
-    def label(self) -> str:
+    def name(self) -> str:
         """Such as ``2 x 1N5822``."""
-        name = self.part or "as given"
-        return name if self.parallel == 1 else f"{self.parallel} x {name}"
+        return marked_label(self.part, self.parallel, is_checked=True)
+
+    @property
+    def label(self) -> str:
+        """The name; one whose junction can't be told says so."""
+        return marked_label(self.part, self.parallel, is_checked=UNCHECKED not in (self.note or ""))
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -143,108 +118,6 @@ class Comparison:
     def to_dict(self) -> dict[str, Any]:
         """Everything by key."""
         return {"rectifiers": [row.to_dict() for row in self.rows], "warnings": list(self.warnings)}
-
-
-def variants(
-    design: Design, names: Sequence[str], parallel: int, tables: Tables, points: Points
-) -> tuple[list[Variant], list[str]]:
-    """Rectifiers worth a look.
-
-    Parameters
-    ----------
-    design : Design
-        The design.
-    names : sequence of str
-        Parts to compare whatever they are rated; none: all of the table whose ratings suffice.
-    parallel : int
-        Most pieces in parallel.
-    tables : Tables
-        The parts.
-    points : Points
-        Operating points, for the ratings.
-
-    Returns
-    -------
-    tuple
-        The design's own first, then the others; what to mind about them.
-
-    Raises
-    ------
-    UnknownNameError
-        A name is in no table.
-    """
-    own = resolve_design(design, tables)
-    given = design.rectifier
-    kind, pieces_given = own.rectifier.kind, given.parallel
-    found = [Variant(part=given.part, kind=kind, parallel=pieces_given, resolved=own, is_own=True)]
-    wanted = [tables.rectifier(name) for name in dict.fromkeys(names)] or list(tables.rectifiers.values())
-    notes: list[str] = []
-    unknown: list[str] = []
-    left_out = 0
-    own_is_plain = given == RectifierSection(part=given.part, parallel=given.parallel)
-    for part in wanted:
-        for pieces in range(1, parallel + 1):
-            if own_is_plain and (part.name, pieces) == (given.part, given.parallel):
-                continue
-            if not names and not _is_rated(part, pieces, points):
-                left_out += 1
-                continue
-            found.append(_variant(design, part, pieces, tables, notes, unknown))
-    if unknown:
-        listed = ", ".join(dict.fromkeys(unknown))
-        notes.append(f"no value for free air is known, {AXIAL_FREE_AIR:g} K/W assumed: {listed}")
-    if left_out:
-        notes.append(f"{left_out} others of the table are not shown: rated below the voltage or current here")
-    return found, list(dict.fromkeys(notes))
-
-
-def _is_rated(part: Rectifier, pieces: int, points: Points) -> bool:
-    current = float(np.max(points.load_current))
-    enough = part.average_current * pieces >= CURRENT_ROOM * current * 0.5
-    return part.reverse_voltage >= float(np.max(points.supply)) and enough
-
-
-def _variant(
-    design: Design, part: Rectifier, pieces: int, tables: Tables, notes: list[str], unknown: list[str]
-) -> Variant:
-    section = RectifierSection(part=part.name, parallel=pieces)
-    resolved = resolve_design(replace(design, rectifier=section), tables)
-    rectifier, heat = resolved.rectifier, resolved.heat
-    is_axial = part.mounting.startswith("axial")
-    if is_axial and heat.rectifier.is_shared:
-        heat = replace(heat, rectifier=replace(heat.rectifier, is_shared=False))
-        notes.append("axial rectifiers stand in free air, not on the shared heat sink")
-    cooled = heat.rectifier.is_shared or heat.rectifier.heatsink is not None
-    if is_axial and rectifier.junction_ambient is None and (not cooled or rectifier.junction_case is None):
-        rectifier = replace(rectifier, junction_ambient=AXIAL_FREE_AIR)
-        heat = replace(heat, rectifier=replace(heat.rectifier, heatsink=None))
-        unknown.append(part.name)
-    if part.recovery_charge is None and part.kind != "Schottky":
-        notes.append(f"{part.name}: no recovery data, taken as a standard rectifier")
-    resolved = replace(resolved, rectifier=rectifier, heat=heat)
-    return Variant(part=part.name, kind=part.kind, parallel=pieces, resolved=resolved, is_own=False)
-
-
-def operate_variants(tried: Sequence[Variant], points: Points, effort: Effort = STUDY) -> Operated:
-    """All variants at all points, the variant slowest.
-
-    Parameters
-    ----------
-    tried : sequence of Variant
-        The rectifiers.
-    points : Points
-        Operating points, the same for each.
-    effort : Effort
-        How long to look for each steady state.
-
-    Returns
-    -------
-    Operated
-        ``len(tried) * len(points)`` points.
-    """
-    rows = np.concatenate([rows_at(one.resolved, points) for one in tried])
-    designs = [one.resolved for one in tried for _ in range(len(points))]
-    return operate_rows(rows, designs, np.tile(points.ambient_c, len(tried)), effort=effort)
 
 
 def compare_rectifiers(
@@ -286,15 +159,16 @@ def compare_rectifiers(
         A value is not allowed, or a part is not known.
     """
     known = load_tables() if tables is None else tables
-    points = points_of(
-        resolve_design(design, known), supply=supply, load_current=load_current, ambient_c=ambient_c
-    )
+    own = resolve_design(design, known)
+    points = points_of(own, supply=supply, load_current=load_current, ambient_c=ambient_c)
+    check_ambient(own, ambient_c)
     tried, notes = variants(design, names, parallel, known, points)
     operated = operate_variants(tried, points, effort)
     rows = rectifier_rows(tried, operated)
-    unknown = [row.label for row in rows if row.junction_c is None and "runaway" not in (row.why_not or "")]
+    unknown = [one.part or "as given" for one in tried if not one.is_checked]
     if unknown:
-        notes.append("no way for the heat is known, junction not checked: " + ", ".join(unknown))
+        listed = ", ".join(dict.fromkeys(unknown))
+        notes.append(f"no way for the heat is known, junction not checked: {listed}")
     if not operated.is_settled.all():
         notes.append("losses and temperatures of some did not settle")
     ordered = sorted(rows, key=lambda row: (row.total_w, row.label))
@@ -388,6 +262,7 @@ def rectifier_rows(tried: Sequence[Variant], operated: Operated) -> list[Rectifi
             frequency_hz=float(rate[index]),
             holds=bool(found.holds[index]),
             why_not=why_not(found, index),
+            note=one.note,
         )
         for index, one in enumerate(tried)
     ]
@@ -415,6 +290,8 @@ def _number(value: float) -> float | None:
 
 __all__ = [
     "PIECES",
+    "STANDARD",
+    "UNCHECKED",
     "Comparison",
     "Judged",
     "RectifierRow",

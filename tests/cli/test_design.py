@@ -54,6 +54,7 @@ def test_writes_the_design_beside_the_requirement_and_says_what_to_do(program: P
         "Behaviour",
         "Losses",
         "Hottest",
+        "Heat sinks",
         "Checks",
         "First power-up",
         "Mind",
@@ -93,7 +94,19 @@ def test_json_has_the_keys_that_scripts_rely_on(program: Program, need: Path, tm
     for check in found["checks"]:
         assert {"name", "value", "limit", "margin", "holds", "where", "note"} <= check.keys()
     assert isinstance(found["alternatives"], list)
+    for device in ("transistor", "regulator", "rectifier"):
+        assert {"heat_w", "needed_k_per_w", "without_sink_c", "needs_sink", "plate"} <= found["heat_sinks"][
+            device
+        ].keys()
     assert any("fuse" in text for text in found["warnings"])
+
+
+def test_an_ambient_that_no_part_stands_is_status_2(program: Program, need: Path) -> None:
+    need.write_text(NEED + '[limits]\nambient = "140 degC"\n')
+    outcome = program("design", need)
+    assert (outcome.status, outcome.out) == (2, "")
+    assert outcome.err.count("\n") == 1 and "limits.ambient" in outcome.err and "125 degC" in outcome.err
+    assert [one.name for one in need.parent.iterdir()] == ["logger.toml"]
 
 
 def test_infeasible_requirement_says_what_blocks_it(program: Program, tmp_path: Path) -> None:

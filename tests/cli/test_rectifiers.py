@@ -73,6 +73,7 @@ def test_over(program: Program, design: Path, tmp_path: Path, over: str) -> None
         (["1N58222"], "1N5822"),
         (["--supply", "0 V"], "supply = 0"),
         (["--load", "2 V"], "--load"),
+        (["--ambient", "130 degC"], "ambient = 130 degC: must be below the junction limit of the regulator"),
         (["--plot", "figure.pdf"], ".svg or .png"),
         (["--parts", "nothing.csv"], "nothing.csv"),
     ],
@@ -100,6 +101,18 @@ def test_wrong_heat_paths_are_status_2(program: Program, design: Path, old: str,
     assert text in found.err and len(found.err.splitlines()) == 1
 
 
+def test_a_junction_that_is_not_checked_is_marked_in_its_row(program: Program, design: Path) -> None:
+    free = BENCH.replace('"transistor", "regulator", "rectifier"', '"transistor", "regulator"')
+    design.write_text(free)
+    found = program("rectifiers", design, "1N5828", "1N5822", "--parallel", "1")
+    row = next(line for line in found.out.splitlines() if line.startswith("1N5828"))
+    assert "JUNCTION NOT CHECKED: no way for its heat is known" in row
+    checked = next(line for line in found.out.splitlines() if line.startswith("1N5822"))
+    assert "NOT CHECKED" not in checked
+    over = program("rectifiers", design, "1N5828", "1N5408", "--over", "load", "--parallel", "1")
+    assert "1N5828 (junction not checked) instead of" in over.out
+
+
 def test_existing_figures_are_kept(program: Program, design: Path, tmp_path: Path) -> None:
     figure = tmp_path / "bars.png"
     figure.write_text("mine")
@@ -125,7 +138,7 @@ def test_own_parts_are_compared(program: Program, design: Path, tmp_path: Path) 
     )
     found = program("rectifiers", design, "drawer diode", "--parts", table)
     assert found.status == 0
-    assert "drawer diode: no recovery data, taken as a standard rectifier" in found.out
+    assert "drawer diode: no recovery data: taken as a standard rectifier" in found.out
 
 
 def test_help_has_an_example(process: Callable[..., Any]) -> None:

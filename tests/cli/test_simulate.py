@@ -162,7 +162,7 @@ def test_a_broken_limit_is_status_3_and_printed(program: Program, design: Path) 
     lines = found.out.splitlines()
     first = lines[next(i for i, line in enumerate(lines) if line.startswith("Checks")) + 2]
     assert first.startswith("drive resistor power") and "FAILS" in first
-    assert "1 of 20 fail" in found.out
+    assert "1 of 21 fail" in found.out
     assert program("simulate", design, "--json").status == 3
 
 
@@ -227,6 +227,7 @@ def test_from_rest(program: Program, design: Path, tmp_path: Path) -> None:
     assert made["transient"].keys() == {
         "peak_choke_a", "peak_output_v", "lowest_output_v", "settling_s", "transistor_energy_j",
         "transistor_peak_w", "safe_area_margin", "regulator_energy_j", "drive_resistor_energy_j",
+        "stress_s", "safe_area_basis",
     }  # fmt: skip
     first = table.read_text().splitlines()[1].split(",")
     assert float(first[0]) == 0.0 and float(first[1]) == 0.0

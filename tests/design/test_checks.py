@@ -36,7 +36,7 @@ PART_LIMITS = {
     "base-emitter resistor power", "output capacitor voltage", "output capacitor ripple current",
     "output capacitor life", "input capacitor voltage", "input capacitor ripple current",
     "input capacitor life", "transistor junction", "regulator junction", "rectifier junction",
-    "core flux density", "choke temperature",
+    "core flux density", "choke temperature", "transistor safe area",
 }  # fmt: skip
 
 
@@ -158,6 +158,7 @@ def test_electrical_only_checks_no_temperature() -> None:
     names = {check.name for check in simulate(bench(), electrical_only=True).point.checks}
     assert names == PART_LIMITS - {
         "transistor junction", "regulator junction", "rectifier junction", "choke temperature",
+        "transistor safe area",
         "output capacitor life", "input capacitor life",
     }  # fmt: skip
 
@@ -333,7 +334,10 @@ def test_warnings(changes: Any, where: Any, text: str) -> None:
         ({}, "bypass capacitor"),
         ({}, "licensed practice"),
         ({"supply.voltage": "48 V", "input_capacitor.rated_voltage": "63 V"}, "more than the 40 V"),
-        ({"output_capacitor.part": "tantalum 100 uF 20 V"}, "tantalum can catch fire"),
+        ({"output_capacitor.part": "tantalum 100 uF 16 V"}, "tantalum can catch fire"),
+        ({"output_capacitor.part": "tantalum 100 uF 25 V"}, "tantalum can catch fire"),
+        ({"output_capacitor.part": "tantalum 100 uF 25 V", "output_capacitor.esr": "0.1 ohm"}, "tantalum can catch"),
+        ({"input_capacitor.part": "tantalum 100 uF 35 V"}, "input capacitor: tantalum can catch fire"),
         ({"thermal.heatsink": "10 K/W"}, "hot to the touch"),
     ],
 )
@@ -355,3 +359,13 @@ def test_short_circuit_power_by_hand() -> None:
 def test_switch_on_stress_is_a_warning() -> None:
     point = simulate(bench(), from_rest=True).point
     assert any(text.startswith("at switch-on the transistor carries up to") for text in point.warnings)
+
+
+def test_a_tantalum_of_twice_the_voltage_is_no_caution() -> None:
+    # trade rule (from memory): 35 V suffices on 15 V, 25 V does not
+    resolved = resolved_bench({"output_capacitor.part": "tantalum 100 uF 35 V"})
+    point = operate(resolved, points_of(resolved))[0]
+    assert not any("tantalum" in text for text in point.cautions)
+    weak = resolved_bench({"output_capacitor.part": "tantalum 100 uF 25 V"})
+    text = next(one for one in operate(weak, points_of(weak))[0].cautions if "tantalum" in one)
+    assert "rated 25 V at 15." in text and "take one rated 31 V" in text

@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 
 from buckdesign.design.capacitor_load import capacitor_loads
-from buckdesign.design.heat_sinks import heat_sinks
+from buckdesign.design.heat_sinks import heat_sinks, worst_heat_sinks
 from buckdesign.design.linear_alternative import linear_alternative
 from buckdesign.design.operating import operate, points_of, simulate
 from buckdesign.physics.convection import plate_resistance
@@ -140,3 +140,32 @@ def test_runaway_names_the_ambient_at_which_it_begins() -> None:
     assert close.startswith("close to thermal runaway")
     # there the losses are taken as they are, so that it is an estimate
     assert float(close.split("ambient of ")[1].split()[0]) == pytest.approx(begins[0], abs=3.0)
+
+
+def test_over_a_range_each_device_is_taken_where_it_asks_for_most() -> None:
+    operated = operated_bench(load_current=[0.3, 1.0, 3.0], supply=[[18.0], [22.0]], ambient_c=40.0)
+    resolved = resolved_bench()
+    worst = worst_heat_sinks(operated, resolved)
+    every = [heat_sinks(operated, resolved, index) for index in range(6)]
+    for name in ("transistor", "regulator", "rectifier"):
+        one = getattr(worst, name)
+        needs = [getattr(other, name).needed_k_per_w for other in every]
+        least = min(need for need in needs if need is not None)
+        assert one.needed_k_per_w == pytest.approx(least)
+        assert one.where.endswith("40 degC") and one.where.count(",") == 2
+    assert worst.shared.needed_k_per_w == pytest.approx(min(one.shared.needed_k_per_w for one in every))
+
+
+def test_only_the_highest_ambient_counts() -> None:
+    operated = operated_bench(ambient_c=[5.0, 40.0])
+    assert worst_heat_sinks(operated, resolved_bench()).transistor.where.endswith("40 degC")
+
+
+def test_the_fitted_sink_has_a_plate_too() -> None:
+    operated = operated_bench()
+    shared = heat_sinks(operated, resolved_bench(), 0).shared
+    plate = shared.fitted_plate
+    # derived: a plate of 3 K/W at the rise that the heat makes on 3 K/W
+    found = plate_resistance(2.0 * plate.side_m**2, plate.side_m, 3.0 * shared.heat_w, 25.0, 0.9)
+    assert found == pytest.approx(3.0, rel=0.01)
+    assert plate.side_low_m < plate.side_m < plate.side_high_m < plate.bright_side_m

@@ -202,7 +202,9 @@ def test_start_from_rest() -> None:
     assert transient.peak_choke_a > steady.choke_current_a["max"]
     assert transient.peak_output_v >= output.max()
     assert transient.lowest_output_v < steady.output_voltage_v
-    assert transient.safe_area_margin is None
+    # derived: the length of a pulse of that power and energy
+    assert transient.stress_s == pytest.approx(transient.transistor_energy_j / transient.transistor_peak_w)
+    assert transient.safe_area_basis == "direct current" and transient.safe_area_margin is not None
 
 
 def test_start_energy_is_the_integral_of_the_power() -> None:

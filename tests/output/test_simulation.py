@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import replace
 
 import pytest
@@ -73,3 +74,36 @@ def test_long_sentences_are_broken() -> None:
     assert lines[0] == "Mind" and len(lines) > 3
     assert lines[1].startswith("  - word") and lines[2].startswith("    word")
     assert max(map(len, lines)) <= 100
+
+
+def test_the_operating_point_stands_in_the_table_where_it_differs(point) -> None:  # type: ignore[no-untyped-def]
+    assert "where" not in checks_text(point.checks).splitlines()[0]
+    moved = (replace(point.checks[0], where="29 V, 2.5 A, 40 degC"), *point.checks[1:])
+    lines = checks_text(moved).splitlines()
+    assert "where" in lines[0]
+    row = next(line for line in lines if line.startswith(point.checks[0].name))
+    assert "29 V, 2.5 A, 40 °C" in row
+
+
+def test_a_note_that_does_not_fit_stands_below_its_row(point) -> None:  # type: ignore[no-untyped-def]
+    long = replace(point.checks[0], note="a word " * 9, where="29 V, 2.5 A, 40 degC", margin=-9.0)
+    short = replace(point.checks[1], note="peak at 85 degC")
+    lines = checks_text((long, short, *point.checks[2:])).splitlines()
+    assert max(map(len, lines)) <= 100
+    assert lines[3].startswith("    a word a word")
+    assert next(line for line in lines if line.startswith(short.name)).endswith("  peak at 85 °C")
+
+
+def test_human_text_has_signs_and_json_has_none(point) -> None:  # type: ignore[no-untyped-def]
+    text = simulation_text(point)
+    assert "degC" not in text and " ohm" not in text and not re.search(r"[0-9] u[FHAs]\b", text)
+    assert any("degC" in one.note for one in point.checks)
+
+
+def test_a_start_names_the_area_that_it_is_held_against(point) -> None:  # type: ignore[no-untyped-def]
+    block = simulation_text(point).split("Start from rest")[1].split("\n\n")[0]
+    assert "safe area" in block and "against direct current; as one pulse of" in block
+    inside = replace(point.transient, safe_area_margin=0.25, safe_area_basis="pulse")
+    assert "margin +25 %, against pulse" in simulation_text(replace(point, transient=inside))
+    unknown = replace(point.transient, safe_area_margin=None, safe_area_basis=None)
+    assert "not known: no ratings" in simulation_text(replace(point, transient=unknown))

@@ -15,7 +15,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from buckdesign.output import text
-from buckdesign.output.text import Column, plain_text, text_pairs, text_table, to_json
+from buckdesign.output.text import Column, plain_text, signs, text_pairs, text_table, to_json
 
 
 def test_examples_in_the_docstrings() -> None:
@@ -81,3 +81,10 @@ def test_json_of_everything_a_result_holds() -> None:
 def test_what_has_no_json_form_is_refused() -> None:
     with pytest.raises(TypeError, match="object"):
         to_json({"a": object()})
+
+
+def test_signs_are_the_reverse_of_plain_text() -> None:
+    for signed in ("470 µF at 85 °C", "2.2 kΩ, 30 mΩ and 4 Ω", "8 µs, 33 µH", "-5 °C to 40 °C"):
+        assert signs(plain_text(signed)) == signed
+    for untouched in ("as degC", "ohm", "5 units", "R 26.9/14.5/11.1", "3 uses", "Co 60"):
+        assert signs(untouched) == untouched

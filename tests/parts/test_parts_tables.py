@@ -49,6 +49,21 @@ def test_transistor_limits(tables: Tables) -> None:
     assert tables.transistor("2N5684").saturation_voltage_max == 1.0
 
 
+def test_safe_area_of_transistors(tables: Tables) -> None:
+    """Source: 1 s tests of MIL-PRF-19500/379 (40 V 3.75 A; 55 V or 65 V 0.9 A) and /466 (30 V 10 A), from memory."""
+    small, large = tables.transistor("2N3792"), tables.transistor("2N5684")
+    assert (small.breakdown_voltage, small.breakdown_current) == (40.0, 3.75)
+    assert (small.breakdown_far_voltage, small.breakdown_far_current) == (65.0, 0.9)
+    assert (large.breakdown_voltage, large.breakdown_current) == (30.0, 10.0)
+    for part in tables.transistors.values():
+        assert (part.breakdown_voltage is None) == (part.safe_area_how == ""), part.name
+        if part.breakdown_voltage is not None and part.breakdown_current is not None:
+            # no point may lie above the power that the thermal resistance allows at 25 degC (derived)
+            power = (part.junction_limit_c - 25.0) / part.junction_case
+            assert part.breakdown_voltage * part.breakdown_current <= 1.01 * power, part.name
+            assert part.safe_area_how.startswith("from memory (unsure, within a factor of"), part.name
+
+
 def test_gain_falls_with_current(tables: Tables) -> None:
     for part in tables.transistors.values():
         gains = [gain for _, gain in part.gain_points]

@@ -75,30 +75,76 @@ def test_charge_agrees_with_the_charge_equation_integrated() -> None:
     assert recovery.charge_at_crossing(current, slope, lifetime) == pytest.approx(charge, rel=1e-6)
 
 
-def test_safe_area_of_a_known_transistor() -> None:
+KNOWN = {"rated_current": 15.0, "rated_voltage": 60.0}
+
+
+def direct(voltage: float, power: float = 115.0) -> float:
     """60 V, 15 A, 115 W with second breakdown at 40 V and 2.87 A: the registered 2N3055 (from memory)."""
-    limits = (15.0, 60.0, 115.0, 40.0, 2.87)
-    assert safe_area.safe_current(5.0, *limits) == 15.0
-    assert safe_area.safe_current(20.0, *limits) == pytest.approx(115.0 / 20.0)
-    assert safe_area.safe_current(40.0, *limits) == pytest.approx(2.87, rel=2e-3)
-    assert safe_area.safe_current(55.0, *limits) < 115.0 / 55.0
-    assert safe_area.safe_current(61.0, *limits) == 0.0
+    second = safe_area.breakdown_current(voltage, 40.0, 2.87, np.nan, np.nan)
+    return float(safe_area.safe_current(voltage, **KNOWN, power=power, breakdown=second))
+
+
+def test_safe_area_of_a_known_transistor() -> None:
+    assert direct(5.0) == 15.0
+    assert direct(20.0) == pytest.approx(115.0 / 20.0)
+    assert direct(40.0) == pytest.approx(2.87, rel=2e-3)
+    assert direct(55.0) < 115.0 / 55.0
+    assert direct(61.0) == 0.0
 
 
 def test_unknown_second_breakdown_is_not_guessed() -> None:
-    allowed = safe_area.safe_current(20.0, 15.0, 60.0, 115.0, np.nan, np.nan)
-    assert np.isnan(allowed)
+    second = safe_area.breakdown_current(20.0, np.nan, np.nan, np.nan, np.nan)
+    allowed = safe_area.safe_current(20.0, **KNOWN, power=115.0, breakdown=second)
+    assert np.isnan(second) and np.isnan(allowed)
+    assert np.isnan(safe_area.safe_current(61.0, **KNOWN, power=115.0, breakdown=second))
     assert np.isnan(safe_area.safe_area_margin(1.0, allowed))
-    assert np.isnan(safe_area.pulse_safe_current(20.0, 1e-2, 40.0, 3.0, 1e-3))
+    assert np.isnan(safe_area.safe_area_margin(0.0, allowed))
+    assert np.isnan(safe_area.pulse_safe_current(20.0, np.nan, np.nan, 15.0, 60.0))
 
 
 @given(st.floats(1.0, 59.0), st.floats(25.0, 180.0))
 def test_hotter_cases_allow_less(voltage: float, case_c: float) -> None:
-    cool, hot = (
-        safe_area.safe_current(voltage, 15.0, 60.0, safe_area.power_limit(200.0, c, 1.5), 40.0, 2.87)
-        for c in (case_c, case_c + 10.0)
-    )
+    cool, hot = (direct(voltage, safe_area.power_limit(200.0, c, 1.5)) for c in (case_c, case_c + 10.0))
     assert hot <= cool
+
+
+def test_two_points_of_second_breakdown_are_joined_by_a_line() -> None:
+    # derived: on doubly logarithmic paper the geometric means of both ends lie on the line
+    points = (30.0, 10.0, 60.0, 0.64)
+    assert safe_area.breakdown_current(30.0, *points) == pytest.approx(10.0)
+    assert safe_area.breakdown_current(60.0, *points) == pytest.approx(0.64)
+    assert safe_area.breakdown_current(np.sqrt(1800.0), *points) == pytest.approx(np.sqrt(6.4))
+
+
+def test_derating_is_a_line_from_25_degrees_to_the_limit() -> None:
+    # derived: 175 K from 25 to 200 degC
+    assert safe_area.derating(200.0, np.array([0.0, 25.0, 112.5, 200.0, 250.0])).tolist() == [1, 1, 0.5, 0, 0]
+
+
+@given(st.floats(0.5, 70.0))
+def test_a_pulse_stays_inside_what_its_point_proves(voltage: float) -> None:
+    allowed = safe_area.pulse_safe_current(voltage, 40.0, 6.0, **KNOWN)
+    assert allowed <= 15.0
+    assert allowed * voltage <= 240.0 * (1.0 + 1e-9)
+    assert (allowed == 0.0) == (voltage > 60.0)
+
+
+@given(st.floats(1e-7, 10.0), st.floats(1.0, 59.0))
+def test_shorter_is_allowed_more_between_direct_current_and_the_pulse(duration: float, voltage: float) -> None:
+    long, pulse = direct(voltage), float(safe_area.pulse_safe_current(voltage, 40.0, 6.0, **KNOWN))
+    now, later = (
+        safe_area.safe_current_for(time, long, pulse, 1e-3) for time in (duration, 2.0 * duration)
+    )
+    assert later <= now * (1.0 + 1e-12)
+    assert long * (1.0 - 1e-12) <= now <= max(pulse, long) * (1.0 + 1e-12)
+
+
+def test_times_between_lie_on_a_line_in_their_logarithm() -> None:
+    # derived: 31.6 ms is the middle between 1 ms and 1 s, so the geometric mean of both currents
+    found = safe_area.safe_current_for(np.array([1e-6, 1e-3, np.sqrt(1e-3), 1.0, np.inf]), 2.0, 8.0, 1e-3)
+    assert found == pytest.approx([8.0, 8.0, 4.0, 2.0, 2.0])
+    unknown = safe_area.safe_current_for(np.array([1e-6, 1.0]), 2.0, np.nan, np.nan)
+    assert unknown.tolist() == [2.0, 2.0]
 
 
 @given(st.floats(1.0, 38.0))

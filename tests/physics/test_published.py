@@ -317,6 +317,9 @@ THERMAL: dict[str, Callable[[Inputs], float]] = {
         v["P"], v["Ta"], v["Rjc"], v["Rcs"], v["Rsa"]
     ),
     "sink resistance": lambda v: thermal.sink_resistance_needed(v["P"], v["Tj"], v["Ta"], v["Rjc"], v["Rcs"]),
+    "touch time, metal": lambda v: float(thermal.touch_time(v["T"], thermal.TOUCH_LIMITS_C["metal"])),
+    "touch time, glass": lambda v: float(thermal.touch_time(v["T"], thermal.TOUCH_LIMITS_C["glass"])),
+    "touch time, plastic": lambda v: float(thermal.touch_time(v["T"], thermal.TOUCH_LIMITS_C["plastic"])),
     "plate convection": lambda v: convection.plate_convection(v["dT"], v["L"]),
     "radiation coefficient": lambda v: convection.radiation_coefficient(v["Ts"], v["Ta"], v["eps"]),
     "plate resistance": lambda v: convection.plate_resistance(v["A"], v["L"], v["dT"], v["Ta"], v["eps"]),

@@ -2,20 +2,23 @@
 
 from __future__ import annotations
 
+from pathlib import Path
 from typing import Any
 
 import numpy as np
 import pytest
 
+from buckdesign.design.design_file import design_with
 from buckdesign.design.operating import operate, points_of
 from buckdesign.errors import UnknownNameError
+from buckdesign.parts import load_tables
 from buckdesign.studies.rectifier_choice import Choice, Curve, Over, crossings, rectifier_choice
-from buckdesign.studies.rectifiers import Comparison, compare_rectifiers
+from buckdesign.studies.rectifiers import STANDARD, UNCHECKED, Comparison, compare_rectifiers
 from tests.design.operating_designs import bench, resolved_bench
 
 KEYS = {
     "part", "kind", "parallel", "conduction_w", "recovery_w", "leakage_w", "total_w", "junction_c",
-    "runaway_margin", "efficiency", "frequency_hz", "holds", "why_not",
+    "runaway_margin", "efficiency", "frequency_hz", "holds", "why_not", "note",
 }  # fmt: skip
 
 
@@ -132,3 +135,34 @@ def test_one_that_drops_out_makes_a_crossing_between_the_values() -> None:
 def test_nothing_holds_is_no_choice() -> None:
     choice = Choice(over=Over.LOAD, values=np.array([1.0, 2.0]), curves=(), crossings=(), note="")
     assert choice.best() == [] or choice.best() == [None, None]
+
+
+def test_each_row_says_what_is_not_known_about_it(found: Comparison) -> None:
+    by = {(row.part, row.parallel): row for row in found.rows}
+    unchecked = by[("1N3879", 1)]
+    assert unchecked.junction_c is None and unchecked.note == UNCHECKED
+    assert unchecked.label == "1N3879 (junction not checked)" and unchecked.name == "1N3879"
+    assert by[("1N5802", 2)].note == "50 K/W in free air assumed"
+    assert by[("1N5822", 1)].note is None
+    # a rectifier that has no temperature always says so, unless it runs away
+    for row in found.rows:
+        lost = row.junction_c is None and "runaway" not in (row.why_not or "")
+        assert lost == (UNCHECKED in (row.note or "")), row.label
+
+
+def test_a_diode_without_recovery_data_counts_as_standard_and_says_so(tmp_path: Path) -> None:
+    path = tmp_path / "drawer.csv"
+    path.write_text(
+        "name,kind,reverse_voltage [V],average_current [A],forward_voltage_1 [V],forward_current_1 [A],"
+        "forward_limit,junction_ambient [K/W],junction_case [K/W],junction_limit_c [degC]\n"
+        "drawer diode,fast,200,8,1.1,3,max,40,2,150\n"
+    )
+    tables = load_tables((path,), folder=tmp_path / "nothing")
+    made = design_with(bench(), {"rectifier.part": "drawer diode", "rectifier.parallel": 1}, tables)
+    own = compare_rectifiers(made, ("1N5811",), tables=tables).own
+    assert own.note == STANDARD
+    other = compare_rectifiers(bench(), ("drawer diode",), tables=tables, parallel=1)
+    row = next(row for row in other.rows if row.part == "drawer diode")
+    assert row.note == STANDARD and f"drawer diode: {STANDARD}" in other.warnings
+    # common practice: a standard rectifier stores some microcoulomb, an ultrafast one some nanocoulomb
+    assert row.recovery_w > 5.0 * other.own.recovery_w
