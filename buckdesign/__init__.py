@@ -17,6 +17,7 @@ if TYPE_CHECKING:
     from buckdesign.loop.results import steady_states, waveforms
     from buckdesign.parts import load_tables
     from buckdesign.studies.many import simulate_many
+    from buckdesign.studies.sweep import sweep
 
 __version__ = "0.1.0"
 
@@ -29,6 +30,7 @@ _HOMES = {
     "simulate": "buckdesign.design.operating",
     "simulate_many": "buckdesign.studies.many",
     "steady_states": "buckdesign.loop.results",
+    "sweep": "buckdesign.studies.sweep",
     "waveforms": "buckdesign.loop.results",
     "write_design": "buckdesign.design.design_file",
 }
@@ -43,6 +45,7 @@ __all__ = [
     "simulate",
     "simulate_many",
     "steady_states",
+    "sweep",
     "waveforms",
     "write_design",
 ]

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+import shutil
 import sys
 from collections.abc import Iterator
 from contextlib import redirect_stderr, redirect_stdout
@@ -15,6 +16,7 @@ from buckdesign.cli.app import COMMANDS, run
 from buckdesign.design.design_file import read_design
 from buckdesign.design.requirement import read_requirement
 from buckdesign.parts import load_tables
+from buckdesign.studies.study_file import read_study
 from tests import readme
 
 ROOT = readme.ROOT
@@ -115,12 +117,14 @@ def test_every_example_file_is_in_the_readme_and_exists() -> None:
 
 
 def test_the_files_shown_are_read_without_fault(tmp_path: Path) -> None:
-    for mark in ("requirement file", "design file", "parts table"):
+    for mark in ("requirement file", "design file", "study file", "parts table"):
         (tmp_path / mark).write_text(readme.block(mark), encoding="utf-8")
     tables = load_tables((tmp_path / "parts table",))
     assert "R 25/15/10" in tables.rings
     assert read_requirement(tmp_path / "requirement file", tables).limits.efficiency == 0.80
     assert read_design(tmp_path / "design file", tables).choke.turns == 75
+    shutil.copy(ROOT / "examples" / "radio_as_built.design.toml", tmp_path)
+    assert read_study(tmp_path / "study file", tables).space.count == 26 * 3 * 10 * 2 * 2
 
 
 REPRODUCIBLE = [one for one in EXAMPLES if one.is_reproducible]

@@ -126,6 +126,8 @@ class LossData:
         Bare wire [m], layers at the bore [1], share of copper in a layer [1]; NaN for a bought choke.
     surface, diameter, choke_volume : NDArray
         Surface [m2], outer diameter [m] and envelope [m3] of the wound ring; NaN for a bought choke.
+    wires, capacity : NDArray
+        Wires through the bore and how many of them it takes [1]; NaN for a bought choke.
     """
 
     transistor_leakage: Floats
@@ -145,6 +147,8 @@ class LossData:
     surface: Floats
     diameter: Floats
     choke_volume: Floats
+    wires: Floats
+    capacity: Floats
 
     def part(self, which: NDArray[np.intp]) -> LossData:
         """Some of the points."""
@@ -174,7 +178,7 @@ def _loss_record(resolved: ResolvedDesign) -> dict[str, Any]:
 _NO_WINDING: Mapping[str, Any] = {
     **dict.fromkeys(("turns", "area", "volume", "wire", "layers", "porosity", "surface", "diameter"), np.nan),
     "core": (np.nan,) * 4,
-    "choke_volume": np.nan,
+    **dict.fromkeys(("choke_volume", "wires", "capacity"), np.nan),
 }
 
 
@@ -207,6 +211,8 @@ def _winding_record(winding: WindingElement | None) -> Mapping[str, Any]:
         "surface": published or float(surface(outer, bore, tall)),
         "diameter": float(outer),
         "choke_volume": float(np.pi / 4 * np.square(outer) * tall),
+        "wires": float(wires),
+        "capacity": float(lay.capacity),
     }
 
 

@@ -42,6 +42,10 @@ SETTLED_SINGLE = 0.05
 """Change below which the temperatures of a single point stand still [K] (own choice)."""
 
 
+_NOTHING = 1e-12
+"""Ripple that is rounding alone [V]."""
+
+
 @dataclass(frozen=True, kw_only=True)
 class Points:
     """Operating points, arrays of one length.
@@ -233,6 +237,7 @@ class Operated:
         power, supply = self.input_power, self.parameter("supply_voltage")
         mean = power / supply
         fitted = np.isfinite(self.data.input_esr)
+        span = loop.column("output_max_v") - loop.column("output_min_v")
         found: dict[str, NDArray[np.float64] | list[str]] = {
             "supply_v": supply,
             "load_a": self.parameter("load_current"),
@@ -245,7 +250,7 @@ class Operated:
             found[name] = loop.column(name)
         found |= {
             "output_voltage_v": loop.column("output_voltage_v"),
-            "ripple_v": loop.column("output_max_v") - loop.column("output_min_v"),
+            "ripple_v": np.where(span > _NOTHING, span, 0.0),
         }
         for name in ("mean", "min", "max", "rms"):
             found[f"choke_current_a.{name}"] = loop.column(f"choke_{name}_a")
