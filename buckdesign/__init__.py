@@ -18,6 +18,7 @@ if TYPE_CHECKING:
     from buckdesign.parts import load_tables
     from buckdesign.studies.many import simulate_many
     from buckdesign.studies.sweep import sweep
+    from buckdesign.studies.tolerance import tolerance
 
 __version__ = "0.1.0"
 
@@ -31,6 +32,7 @@ _HOMES = {
     "simulate_many": "buckdesign.studies.many",
     "steady_states": "buckdesign.loop.results",
     "sweep": "buckdesign.studies.sweep",
+    "tolerance": "buckdesign.studies.tolerance",
     "waveforms": "buckdesign.loop.results",
     "write_design": "buckdesign.design.design_file",
 }
@@ -46,6 +48,7 @@ __all__ = [
     "simulate_many",
     "steady_states",
     "sweep",
+    "tolerance",
     "waveforms",
     "write_design",
 ]

@@ -26,8 +26,8 @@ EXAMPLES = list(readme.examples())
 
 MENTION = re.compile(r"\bbuckdesign ((?:[a-z]+ ?){1,2})")
 OPTION = re.compile(r"(?<![\w-])(--[a-z][a-z-]+)")
-NOT_OURS = frozenset({"--editable", "--group", "--quiet", "--upgrade"})
-"""Options of pip in the two command lines."""
+NOT_OURS = frozenset({"--editable", "--group", "--quiet", "--upgrade", "--nthreads"})
+"""Options of pip in the two command lines, and of a cluster's worker."""
 
 
 def helped(*words: str) -> str:
@@ -124,6 +124,9 @@ def test_the_files_shown_are_read_without_fault(tmp_path: Path) -> None:
     assert read_requirement(tmp_path / "requirement file", tables).limits.efficiency == 0.80
     assert read_design(tmp_path / "design file", tables).choke.turns == 75
     shutil.copy(ROOT / "examples" / "radio_as_built.design.toml", tmp_path)
+    with (tmp_path / "design file").open("a", encoding="utf-8") as file:
+        file.write(readme.block("tolerance table"))
+    assert len(read_design(tmp_path / "design file", tables).tolerance) == 4
     assert read_study(tmp_path / "study file", tables).space.count == 26 * 3 * 10 * 2 * 2
 
 

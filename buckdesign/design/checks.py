@@ -251,7 +251,11 @@ def _choke_limits(operated: Operated, rating: RatingData) -> list[Limit]:
             note="at the peak current, against saturation",
         ),
         upper_limit(
-            "wires through the bore", "1", operated.data.wires, operated.data.capacity, "turns times strands; as many as fit"
+            "wires through the bore",
+            "1",
+            operated.data.wires,
+            operated.data.capacity,
+            "turns times strands; as many as fit",
         ),
         Limit(
             name="choke temperature",

@@ -38,7 +38,7 @@ FIRST_WINDOW = 16
 REGULAR_SPREAD = 1e-3
 """Spread of periods below which irregular oscillation may have become regular [1] (own choice)."""
 
-SETTLED_SINGLE = 0.05
+SETTLED_SINGLE = 0.005
 """Change below which the temperatures of a single point stand still [K] (own choice)."""
 
 

@@ -5,9 +5,9 @@ Run as ``python tests/benchmarks/sweep.py [--json] [--points N] [--references N]
 - ``ratio``: time that solve_ivp (RK45, rtol 1e-6, the same events, mode by mode, one process) needs for 64 cycles of
   every point, extrapolated from some of them, over the time from the command to the finished table with two jobs;
 - ``points_per_s``: points a second of the command with two jobs, start of the program and all;
-- ``two_jobs``: time with one job over the time with two, of a tenth of the points;
-- ``cluster``: time with ``--cluster local:2`` over the time with two jobs, of a tenth of the points;
-- ``memory``: peak memory of all processes together with all points over that with a tenth of them;
+- ``two_jobs``: time with one job over the time with two, of a fifth of the points;
+- ``cluster``: time with ``--cluster local:2`` over the time with two jobs, of a fifth of the points;
+- ``memory``: peak memory of all processes together with all points over that with a fifth of them;
 - ``first_row_s``: time from the command to the first row on disk.
 """
 
@@ -184,15 +184,15 @@ def measure(points: int, references: int, options: tuple[str, ...]) -> dict[str,
     with tempfile.TemporaryDirectory() as name:
         folder = Path(name)
         (folder / "radio.design.toml").write_text(DESIGN)
-        whole, tenth = folder / "whole.study.toml", folder / "tenth.study.toml"
+        whole, fifth = folder / "whole.study.toml", folder / "fifth.study.toml"
         networks = max(round(points / PER_NETWORK), 2)
         whole.write_text(STUDY.format(networks=networks))
-        tenth.write_text(STUDY.format(networks=max(round(networks / 10), 1)).replace(
+        fifth.write_text(STUDY.format(networks=max(round(networks / 5), 1)).replace(
             'count = 1, spacing = "log"', 'count = 2, spacing = "log"'))  # fmt: skip
-        command(folder, tenth, "--jobs", "2", *options)
-        small = command(folder, tenth, "--jobs", "2", *options)
-        single = command(folder, tenth, "--jobs", "1", *options)
-        remote = command(folder, tenth, "--cluster", "local:2", *options)
+        command(folder, fifth, "--jobs", "2", *options)
+        small = command(folder, fifth, "--jobs", "2", *options)
+        single = command(folder, fifth, "--jobs", "1", *options)
+        remote = command(folder, fifth, "--cluster", "local:2", *options)
         large = command(folder, whole, "--jobs", "2", "--allow", str(100 * points), *options)
         slow, count = reference_seconds(whole, references, "--electrical-only" in options)
     return found | {

@@ -162,7 +162,7 @@ def test_a_broken_limit_is_status_3_and_printed(program: Program, design: Path) 
     lines = found.out.splitlines()
     first = lines[next(i for i, line in enumerate(lines) if line.startswith("Checks")) + 2]
     assert first.startswith("drive resistor power") and "FAILS" in first
-    assert "1 of 21 fail" in found.out
+    assert "1 of 22 fail" in found.out
     assert program("simulate", design, "--json").status == 3
 
 

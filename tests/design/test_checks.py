@@ -36,7 +36,7 @@ PART_LIMITS = {
     "base-emitter resistor power", "output capacitor voltage", "output capacitor ripple current",
     "output capacitor life", "input capacitor voltage", "input capacitor ripple current",
     "input capacitor life", "transistor junction", "regulator junction", "rectifier junction",
-    "core flux density", "choke temperature", "transistor safe area",
+    "core flux density", "choke temperature", "transistor safe area", "wires through the bore",
 }  # fmt: skip
 
 
@@ -369,3 +369,13 @@ def test_a_tantalum_of_twice_the_voltage_is_no_caution() -> None:
     weak = resolved_bench({"output_capacitor.part": "tantalum 100 uF 25 V"})
     text = next(one for one in operate(weak, points_of(weak))[0].cautions if "tantalum" in one)
     assert "rated 25 V at 15." in text and "take one rated 31 V" in text
+
+
+def test_a_winding_must_pass_the_bore() -> None:
+    """Turns times strands against what the layers of the bore take, as `choke wind` counts them."""
+    loose = checks_of()["wires through the bore"]
+    assert loose.holds and loose.value is not None and loose.limit is not None
+    tight = checks_of({"choke.turns": int(loose.limit) + 1})["wires through the bore"]
+    assert tight.value == loose.limit + 1 and not tight.holds
+    double = checks_of({"choke.strands": 2})["wires through the bore"]
+    assert double.value == 2 * loose.value
