@@ -22,6 +22,7 @@ from buckdesign.design.operating import (
 from buckdesign.errors import InputError
 from buckdesign.loop.results import DETAILED, Start
 from buckdesign.output.text import json_value
+from tests.loop.population import usual
 
 from .operating_designs import BOUGHT, bench, random_rows, resolved_bench
 
@@ -256,3 +257,20 @@ def test_importing_the_package_costs_nothing() -> None:
     code = "import sys, buckdesign; print(sorted({'numpy', 'scipy', 'numba', 'pandas'} & set(sys.modules)))"
     found = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert found.stdout.strip() == "[]"
+
+
+def test_tables_agree_with_single_simulations() -> None:
+    """A table's temperatures stand still within 0.1 K, a single simulation's within 0.005 K."""
+    resolved = resolved_bench()
+    rows = usual(120, 41)
+    table = operate_rows(rows, resolved)
+    alone = operate_rows(rows, resolved, effort=DETAILED)
+    both = (table.loop.column("period_cycles") == 1.0) & (alone.loop.column("period_cycles") == 1.0)
+    assert both.mean() > 0.8
+    for found, wanted, tolerance in (
+        (table.loop.column("frequency_hz"), alone.loop.column("frequency_hz"), 3e-3),
+        (table.total_loss, alone.total_loss, 2e-3),
+    ):
+        np.testing.assert_allclose(found[both], wanted[both], rtol=tolerance)
+    for device in ("transistor", "rectifier", "regulator"):
+        np.testing.assert_allclose(table.junction(device)[both], alone.junction(device)[both], atol=0.1)
