@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, fields
+from functools import lru_cache
 from operator import attrgetter
 from typing import Any, TypeVar
 
@@ -51,6 +52,9 @@ _LOOP_LOSSES: Mapping[str, str] = {
 LEAKAGE_CEILING_C = 200.0
 """Junction temperature up to which leakage is followed [degC] (own choice, above every junction limit): one
 that is hotter without it has failed already, which is not called runaway."""
+
+SHAPES = 4096
+"""Wound shapes that are kept [1] (own choice)."""
 
 DUTY_LIMITS = (0.02, 0.98)
 """Duty of the choke's flux beyond which its eddy loss is not extrapolated [1] (own choice)."""
@@ -186,32 +190,40 @@ def _winding_record(winding: WindingElement | None) -> Mapping[str, Any]:
     if winding is None:
         return _NO_WINDING
     ring, wire, wires = winding.ring, winding.wire, winding.turns * winding.strands
-    height = ring.height * winding.stack
-    lay = wind(ring.outer_diameter, ring.inner_diameter, height, wire.outer_diameter_grade1, wires)
-    outer, bore, tall = wound_dimensions(
+    shape = _wound_shape(
         ring.outer_diameter,
         ring.inner_diameter,
-        height,
+        ring.height * winding.stack,
         wire.outer_diameter_grade1,
-        lay.layers,
-        lay.outside_layers,
+        wire.conductor_diameter,
+        wires,
     )
     published = ring.wound_surface if winding.stack == 1 else None
-    porosity = bore_porosity(
-        wires, lay.layers, wire.conductor_diameter, ring.inner_diameter, wire.outer_diameter_grade1
-    )
     return {
         "turns": float(winding.turns),
         "area": winding.effective_area,
         "volume": winding.effective_volume,
         "core": winding.material.loss_coefficients or (np.nan,) * 4,
         "wire": wire.conductor_diameter,
-        "layers": float(lay.layers),
-        "porosity": float(porosity),
-        "surface": published or float(surface(outer, bore, tall)),
-        "diameter": float(outer),
-        "choke_volume": float(np.pi / 4 * np.square(outer) * tall),
         "wires": float(wires),
+        **shape,
+        "surface": published or shape["surface"],
+    }
+
+
+@lru_cache(maxsize=SHAPES)
+def _wound_shape(
+    outer: float, inner: float, height: float, wire: float, conductor: float, wires: int
+) -> Mapping[str, float]:
+    """What a winding's geometry gives [SI]; variants of a design mostly share it."""
+    lay = wind(outer, inner, height, wire, wires)
+    far, bore, tall = wound_dimensions(outer, inner, height, wire, lay.layers, lay.outside_layers)
+    return {
+        "layers": float(lay.layers),
+        "porosity": float(bore_porosity(wires, lay.layers, conductor, inner, wire)),
+        "surface": float(surface(far, bore, tall)),
+        "diameter": float(far),
+        "choke_volume": float(np.pi / 4 * np.square(far) * tall),
         "capacity": float(lay.capacity),
     }
 

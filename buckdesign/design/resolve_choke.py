@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from functools import lru_cache
 
 from buckdesign.design.elements import ChokeElement, WindingElement
 from buckdesign.design.sections import ChokeSection
@@ -24,6 +25,9 @@ BOUGHT_BIAS_EXPONENT = 1.5
 
 FERRITE_BIAS_EXPONENT = 8.0
 """Exponent that makes the inductance of an ungapped ferrite ring collapse at saturation (assumed)."""
+
+MOST_LAYS = 4096
+"""Windings whose mean turn is kept [1] (own choice)."""
 
 
 def resolve_choke(section: ChokeSection, tables: Tables, assumptions: list[str]) -> ChokeElement:
@@ -86,15 +90,23 @@ def winding_resistance(winding: WindingElement, temperature_c: float = 20.0) -> 
         [ohm].
     """
     ring, wire = winding.ring, winding.wire
-    lay = wind(
-        ring.outer_diameter,
-        ring.inner_diameter,
-        ring.height * winding.stack,
-        wire.outer_diameter_grade1,
-        winding.turns * winding.strands,
+    length = wire_length(
+        winding.turns,
+        _mean_turn(
+            ring.outer_diameter,
+            ring.inner_diameter,
+            ring.height * winding.stack,
+            wire.outer_diameter_grade1,
+            winding.turns * winding.strands,
+        ),
     )
-    length = wire_length(winding.turns, lay.mean_turn)
     return float(dc_resistance(length, wire.conductor_diameter, winding.strands, temperature_c))
+
+
+@lru_cache(maxsize=MOST_LAYS)
+def _mean_turn(outer: float, inner: float, height: float, wire: float, wires: int) -> float:
+    """Mean turn of a winding [m]; variants of a design mostly share their winding."""
+    return float(wind(outer, inner, height, wire, wires).mean_turn)
 
 
 def _winding(section: ChokeSection, tables: Tables, assumptions: list[str]) -> WindingElement:

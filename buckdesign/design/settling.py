@@ -12,7 +12,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from buckdesign.design.heat_paths import HeatData, Ways
-from buckdesign.design.hot_parameters import COPPER_CEILING_C, PARAMETER_RANGE_C, REGULATOR, parameters_at
+from buckdesign.design.hot_parameters import (
+    COPPER_CEILING_C,
+    PARAMETER_RANGE_C,
+    REGULATOR,
+    parameters_at,
+    turn_on_slope,
+)
 from buckdesign.design.losses import Floats, LossData
 from buckdesign.design.sections import DEVICES
 from buckdesign.design.temperatures import Balance, balance, without_leakage
@@ -43,9 +49,10 @@ GUESSED_SHARE, GUESSED_DROP, GUESSED_CHOKE, GUESSED_MOST = 0.04, 0.4, 17.0, 60.0
 """First guess of the temperatures: loss of transistor and of regulator over supply times load [1], drop of the
 rectifier [V], rise of the choke and largest rise of a junction [K] (own choice: middle of random designs)."""
 
-ESR_FELT, LOSS_FELT, DROP_FELT = 0.02, 0.01, 5e-3
-"""What counts like a kelvin: change of the ESR [1], of the recovery loss over all losses [1], of the
-saturation voltage [V] (own choice)."""
+ESR_FELT, LOSS_FELT, DROP_FELT, DELAY_FELT = 0.02, 0.01, 5e-3, 3e-4
+"""What counts like a kelvin: change of the ESR [1], of the recovery loss over all losses [1], of the saturation
+voltage [V], of the time that recovery takes over the period [1] (own choice; a delay moves the rate of the loop by
+some ten times its share of the period)."""
 
 
 class Run(Protocol):
@@ -171,8 +178,11 @@ def _felt_by_rows(now: Floats, then: Floats, loop: SteadyStates, found: Balance)
     total = np.maximum(sum(found.losses.values(), np.zeros(len(now))), 1e-3)
     regular = loop.column("period_cycles") == 1.0
     swept = np.abs(then[:, charge] - now[:, charge]) * now[:, COLUMN["supply_voltage"]]
+    slope = np.maximum(turn_on_slope(now, loop, np.maximum(loop.column("regulator_max_a"), 1e-6)), 1.0)
+    delay = np.abs(np.sqrt(2.0 * then[:, charge] / slope) - np.sqrt(2.0 * now[:, charge] / slope))
     return np.maximum.reduce(
         [
+            np.where(regular, delay * loop.column("frequency_hz"), 0.0) / DELAY_FELT,
             np.where(regular, np.abs(then[:, esr] / np.maximum(now[:, esr], 1e-9) - 1.0), 0.0) / ESR_FELT,
             swept * loop.column("frequency_hz") / total / LOSS_FELT,
             np.abs(then[:, drop] - now[:, drop]) / DROP_FELT,

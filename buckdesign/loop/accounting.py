@@ -174,6 +174,15 @@ def _node_voltage(c: Array, s: Array, mode: int, il: float, iav: float, vout: fl
 
 
 @compiled
+def _peaks(c: Array, a: Array, mode: int, il: float, ic: float, vsw: float) -> None:
+    """Largest currents of rectifier and collector, and largest power of the transistor."""
+    if mode == FREEWHEEL:
+        a[A_ID_MAX] = max(a[A_ID_MAX], il - ic)
+    a[A_IC_MAX] = max(a[A_IC_MAX], ic)
+    a[A_POWER_MAX] = max(a[A_POWER_MAX], (c[K_VIN] - vsw) * ic)
+
+
+@compiled
 def account(c: Array, m: Discrete, s: Array, h: float, a: Array) -> None:
     """Add one step of length ``h``, whose coefficients stand in ``s``, to the accounts ``a``."""
     mode = m[M_MODE]
@@ -229,11 +238,13 @@ def account(c: Array, m: Discrete, s: Array, h: float, a: Array) -> None:
             sum_id += w * current
             sum_id2 += w * current * current
             sum_diode -= w * vsw * current
-            a[A_ID_MAX] = max(a[A_ID_MAX], current)
-        a[A_IC_MAX] = max(a[A_IC_MAX], ic)
-        a[A_POWER_MAX] = max(a[A_POWER_MAX], lost)
+        _peaks(c, a, mode, il, ic, vsw)
         a[A_DIFFERENCE_MAX] = max(a[A_DIFFERENCE_MAX], across)
         a[A_REVERSE_MAX] = max(a[A_REVERSE_MAX], vsw)
+    for t in (0.0, h):
+        il = value(s, S_IL, ORDER, t) if mode != EMPTY else 0.0
+        ic = il if on else (value(s, S_IAV, ORDER - 1, t) if partly else 0.0)
+        _peaks(c, a, mode, il, ic, _node_voltage(c, s, mode, il, ic, value(s, S_VOUT, ORDER - 1, t), t))
     a[A_VOUT] += sum_v
     a[A_IL] += sum_il
     a[A_IL2] += sum_il2

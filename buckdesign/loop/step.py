@@ -68,6 +68,8 @@ from .taylor import SMALL_BIAS, bound_line, expand
 
 TINY = 1e-13
 AFTER_EVENT = 1e4
+# error of the collector current that the charge can carry, over that of the states: what it does to them is small
+LOOSER = 2e3
 
 (
     NONE, LEAVE_LOW, REACH_LOW, REACH_HIGH, LEAVE_HIGH, OTHER_BOUND, BOUND_BELOW, PINNED_FALLS, PINNED_RISES,
@@ -116,6 +118,12 @@ def _length(c: Array, m: Discrete, s: Array, order: int, limit: float) -> float:
         h = min(h, math.exp(math.log(c[K_TOLERANCE] / last) / order))
     if before > 0.0:
         h = min(h, math.exp(math.log(c[K_TOLERANCE] / before) / (order - 1)))
+    if c[K_IK_INV] > 0.0 and m[M_BASE] == 1 and (m[M_MODE] == FREEWHEEL or m[M_MODE] == RECOVERING):
+        # the gain knee makes a root of the charge, which converges less far; with a rectifier of no slope nothing
+        # else feels it but the accounts
+        size = abs(s[S_IAV, order - 1]) / c[K_SC_I]
+        if size > 0.0:
+            h = min(h, math.exp(math.log(LOOSER * c[K_TOLERANCE] / size) / (order - 1)))
     if c[K_I0_INV] > 0.0 and m[M_MODE] != EMPTY and s[S_IL, 0] * c[K_I0_INV] <= SMALL_BIAS:
         while value(s, S_IL, order, h) * c[K_I0_INV] > 10.0 * SMALL_BIAS:
             h *= 0.6

@@ -274,3 +274,16 @@ def test_tables_agree_with_single_simulations() -> None:
         np.testing.assert_allclose(found[both], wanted[both], rtol=tolerance)
     for device in ("transistor", "rectifier", "regulator"):
         np.testing.assert_allclose(table.junction(device)[both], alone.junction(device)[both], atol=0.1)
+
+
+def test_recovery_charge_is_followed_until_the_rate_stands_still() -> None:
+    """Without heat paths only the recovery charge moves; its loss is small, what it does to the rate is not."""
+    resolved = resolved_bench(
+        {"rectifier.part": "1N5811", "thermal.heatsink": None, "thermal.on_heatsink": None, "thermal.pad": None}
+    )
+    points = points_of(resolved)
+    table = operate_rows(rows_at(resolved, points), resolved)
+    alone = operate_rows(rows_at(resolved, points), resolved, effort=DETAILED)
+    assert table.loop.column("frequency_hz") == pytest.approx(alone.loop.column("frequency_hz"), rel=5e-4)
+    recovered = "rectifier_recovery"
+    assert table.balance.losses[recovered] == pytest.approx(alone.balance.losses[recovered], rel=0.02)

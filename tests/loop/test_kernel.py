@@ -251,3 +251,19 @@ def test_a_row_that_holds_no_number_is_refused(bad: float) -> None:
 def test_a_row_of_another_width_is_refused() -> None:
     with pytest.raises(ValueError, match=f"{len(COLUMNS)} columns"):
         steady_states(np.ones((2, 5)))
+
+
+def test_a_rectifier_without_slope_is_the_limit_of_a_small_one() -> None:
+    """Without slope nothing but the accounts feels the collector current as the transistor turns off."""
+    rows = usual(60, 29)
+    assert np.isfinite(rows[:, COLUMN["gain_knee"]]).all()
+    found = []
+    for slope in (0.0, 1e-6):
+        rows[:, COLUMN["slope"]] = slope
+        found.append(steady_states(rows))
+    flat, small = found
+    both = (flat.column("period_cycles") == 1.0) & (small.column("period_cycles") == 1.0)
+    assert both.sum() > 40
+    for name in ("frequency_hz", "transistor_switching_w", "rectifier_w", "rectifier_mean_a", "rectifier_max_a"):
+        np.testing.assert_allclose(flat.column(name)[both], small.column(name)[both], rtol=2e-5, err_msg=name)
+    assert (flat.column("rectifier_max_a")[both] <= flat.column("choke_max_a")[both] * (1.0 + 1e-9)).all()
