@@ -62,7 +62,7 @@ def sweep(
     """
     from buckdesign.studies.sweep import run_sweep, sweep_task
 
-    _check_figures(plot, effects, force)
+    _check_files(plot, effects, output, parts, force)
     task = sweep_task(study, tables_with(parts), electrical_only=electrical_only)
     shown = _results(result, task.kinds) if result else None
     _note_compiling()
@@ -71,15 +71,29 @@ def sweep(
             task, output, jobs=jobs, cluster=cluster, restart=restart, allow=allow,
             progress=progress, tell=print_note,
         )  # fmt: skip
-    _draw(done, plot, effects, shown, force)
+    if done.failed == done.task.work.count and (plot or effects):
+        print_note("no point could be computed: there is nothing to draw")
+    else:
+        _draw(done, plot, effects, shown, force)
     _print(done, json)
     if done.failed:
         raise typer.Exit(POINTS_FAIL)
 
 
-def _check_figures(plot: Path | None, effects: Path | None, force: bool) -> None:
+def _check_files(
+    plot: Path | None, effects: Path | None, output: Path | None, parts: list[Path] | None, force: bool
+) -> None:
     from buckdesign.design.safe_write import check_writable_name
+    from buckdesign.errors import FileAccessError, InputError
     from buckdesign.output.plots import figure_format
+
+    given = {"--output": output, "--plot": plot, "--effects": effects}
+    places = [path.absolute() for path in given.values() if path is not None]
+    if len(set(places)) < len(places):
+        named = [name for name, path in given.items() if path is not None and places.count(path.absolute()) > 1]
+        raise InputError(f"{' and '.join(named)}: the same file for both")
+    if output is not None and any(output.exists() and one.exists() and output.samefile(one) for one in parts or ()):
+        raise FileAccessError(output, "the parts are read from this file; another name is wanted")
 
     for path in (plot, effects):
         if path is not None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import textwrap
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from itertools import combinations
@@ -12,15 +13,17 @@ from numpy.typing import NDArray
 
 from buckdesign.errors import InputError
 from buckdesign.output.plots import COLOURS, STYLE
+from buckdesign.studies.axis import LogSteps, Spacing
 from buckdesign.studies.sweep import SweepResult
+from buckdesign.studies.table_file import LIST_SEPARATOR
 
 if TYPE_CHECKING:
     import pandas as pd
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-PAIRS = 3
-"""Most pairs of objectives in a figure [1]."""
+PAIRS, ACROSS = 15, 3
+"""Most pairs of objectives in a figure (all of up to six), and how many stand side by side [1]."""
 
 MOST_GROUPS = 24
 """Most different values of a key that get a bar of their own; more are drawn as points [1]."""
@@ -28,13 +31,22 @@ MOST_GROUPS = 24
 BINS = 15
 """Pieces in which the median of many different values is taken [1]."""
 
-MOST_ROWS, MOST_KEYS = 12, 6
+MOST_ROWS, MOST_KEYS = 12, 12
 """Most results and most varied keys in a figure [1]."""
 
 MAIN_RESULTS = (
     "frequency_hz", "ripple_v", "output_voltage_v", "efficiency", "total_loss_w", "junction_c.transistor", "choke_c",
 )  # fmt: skip
 """Results that are drawn where none are named, beside the objectives."""
+
+MOST_TICKS = 8
+"""Most numbers at an axis of groups [1]."""
+
+PANEL, NAME, MOST_WIDE = 2.3, 0.15, 15.0
+"""Width of a panel, of a name in it, and of the widest panel [inch]."""
+
+TICK_WIDTH = 20
+"""Characters in a line of a tick, beyond which it goes on in the next [1]."""
 
 _FAINT = "#b9b9b9"
 _UNITS = {"degC": "°C", "ohm": "Ω", "cm3": "cm³", "1": "", "%": ""}
@@ -58,8 +70,14 @@ class StudyPoints:
         Those of them that are to be large.
     keys : tuple of str
         Varied keys.
+    logarithmic : frozenset of str
+        Those that the study spaces in equal ratios.
     units : Mapping
         Unit by column, as `buckdesign.units` names it; absent: none.
+    count : int
+        Points that could be computed, of which `sample` has all or some.
+    shown : Mapping
+        Text of a tick by column and text of the table, where it is another one.
     """
 
     sample: pd.DataFrame
@@ -68,7 +86,10 @@ class StudyPoints:
     objectives: tuple[str, ...]
     maximised: tuple[str, ...]
     keys: tuple[str, ...]
+    logarithmic: frozenset[str]
     units: Mapping[str, str]
+    count: int
+    shown: Mapping[tuple[str, str], str]
 
     def label(self, column: str) -> str:
         """A column with its unit, for an axis."""
@@ -83,6 +104,13 @@ class StudyPoints:
             return whole
         head, dot, tail = whole.partition(".")
         return f"{head}.\n{tail}" if dot else whole.replace(" [", "\n[")
+
+    @property
+    def drawn(self) -> str:
+        """How many of the points are drawn."""
+        if len(self.sample) == self.count:
+            return f"{self.count:,} points"
+        return f"{len(self.sample):,} of {self.count:,} points, evenly spread"
 
 
 def front_figure(points: StudyPoints) -> Figure:
@@ -105,13 +133,21 @@ def front_figure(points: StudyPoints) -> Figure:
         return effects_figure(points, points.objectives)
     pairs = list(combinations(points.objectives, 2))[:PAIRS]
     with matplotlib.rc_context(STYLE):
-        figure = Figure(figsize=(max(6.0, 4.2 * len(pairs)), 4.4), layout="constrained")
-        panels = np.atleast_1d(figure.subplots(1, len(pairs)))
-        for axes, (across, up) in zip(panels, pairs, strict=True):
+        columns, rows = min(len(pairs), ACROSS), -(-len(pairs) // ACROSS)
+        figure = Figure(figsize=(max(6.0, 4.2 * columns), 0.4 + 4.0 * rows), layout="constrained")
+        panels = figure.subplots(rows, columns, squeeze=False).ravel()
+        for axes in panels[len(pairs) :]:
+            axes.remove()
+        for axes, (across, up) in zip(panels[: len(pairs)], pairs, strict=True):
             _draw_pair(axes, points, across, up, joined=len(points.objectives) == 2)
         handles, names = panels[0].get_legend_handles_labels()
         figure.legend(handles, names, loc="outside upper left", ncols=3, frameon=False)
+        _caption(figure, points.drawn)
     return figure
+
+
+def _caption(figure: Figure, text: str) -> None:
+    figure.supxlabel(text, fontsize=8.0, color="#666666", x=0.995, ha="right")
 
 
 def _draw_pair(axes: Axes, points: StudyPoints, across: str, up: str, *, joined: bool) -> None:
@@ -121,7 +157,8 @@ def _draw_pair(axes: Axes, points: StudyPoints, across: str, up: str, *, joined:
             sample[across][~keeps], sample[up][~keeps], s=9, facecolors="none", edgecolors=_FAINT,
             linewidths=0.6, label="a constraint fails",
         )  # fmt: skip
-    axes.scatter(sample[across][keeps], sample[up][keeps], s=9, color="#7d8794", linewidths=0, label="computed")
+    name = "computed" if keeps.all() else "every constraint holds"
+    axes.scatter(sample[across][keeps], sample[up][keeps], s=9, color="#7d8794", linewidths=0, label=name)
     ordered = front.sort_values([across, up])
     if joined and len(ordered) > 1:
         style = _step_style(across in points.maximised)
@@ -170,17 +207,20 @@ def effects_figure(points: StudyPoints, results: Sequence[str]) -> Figure:
     -------
     Figure
         One row a result, one column a varied key: span, middle half and median where a key has few values,
-        else points and a running median.
+        else points and a running median; of all points, whether they keep the constraints or not.
     """
     import matplotlib
     from matplotlib.figure import Figure
-    from matplotlib.ticker import EngFormatter
+    from matplotlib.ticker import EngFormatter, LogLocator, NullFormatter
 
     shown, keys = list(results)[:MOST_ROWS], list(points.keys)[:MOST_KEYS]
     with matplotlib.rc_context(STYLE):
-        size = (max(4.5, 1.2 + 2.3 * len(keys)), 0.9 + 1.75 * len(shown))
+        widths = [_panel_width(points.sample[key]) for key in keys]
+        size = (max(4.5, 1.2 + sum(widths)), 0.9 + 1.75 * len(shown))
         figure = Figure(figsize=size, layout="constrained")
-        panels = figure.subplots(len(shown), len(keys), squeeze=False, sharey="row", sharex="col")
+        panels = figure.subplots(
+            len(shown), len(keys), squeeze=False, sharey="row", sharex="col", width_ratios=widths
+        )
         for row, result in zip(panels, shown, strict=True):
             for axes, key in zip(row, keys, strict=True):
                 _draw_effect(axes, points, key, result)
@@ -189,10 +229,37 @@ def effects_figure(points: StudyPoints, results: Sequence[str]) -> Figure:
                 row[0].yaxis.set_major_formatter(EngFormatter(sep=""))
         for axes, key in zip(panels[-1], keys, strict=True):
             axes.set_xlabel(points.label(key))
-            if _groups(points.sample[key]) is None and not 1e-2 <= points.sample[key].abs().max() < 1e4:
+            if _groups(points.sample[key]) is not None:
+                continue
+            if key in points.logarithmic:
+                axes.xaxis.set_major_locator(LogLocator(subs=(1.0, 2.0, 5.0)))
+                axes.xaxis.set_minor_formatter(NullFormatter())
+            if key in points.logarithmic or not 1e-2 <= points.sample[key].abs().max() < 1e4:
                 axes.xaxis.set_major_formatter(EngFormatter(sep=""))
         figure.align_ylabels(panels[:, 0])
+        _caption(figure, _effects_caption(points, keys, results))
     return figure
+
+
+def _panel_width(along: Any) -> float:
+    """Width of a column [inch]: many names want room."""
+    groups = _groups(along)
+    many = len(groups) if groups is not None and isinstance(groups[0], str) else 0
+    return min(max(PANEL, NAME * many), MOST_WIDE)
+
+
+def _effects_caption(points: StudyPoints, keys: Sequence[str], results: Sequence[str]) -> str:
+    groups = [_groups(points.sample[key]) for key in keys]
+    parts = []
+    if any(one is not None for one in groups):
+        parts.append("bars: median, middle half, span")
+    if any(one is None for one in groups):
+        parts.append("lines: running median")
+    parts.append(points.drawn)
+    for what, drawn, whole in (("keys", len(keys), len(points.keys)), ("results", MOST_ROWS, len(results))):
+        if drawn < whole:
+            parts.append(f"first {drawn} of {whole} {what}")
+    return "\n".join(("; ".join(parts[:-1]), parts[-1])) if len(keys) == 1 else "; ".join(parts)
 
 
 def _draw_effect(axes: Axes, points: StudyPoints, key: str, result: str) -> None:
@@ -201,10 +268,12 @@ def _draw_effect(axes: Axes, points: StudyPoints, key: str, result: str) -> None
     groups = _groups(along)
     if groups is not None:
         _draw_groups(axes, groups, along, values)
+        names = [_tick(one, points.shown.get((key, str(one)))) for one in groups]
+        _name_groups(axes, names, thin=not isinstance(groups[0], str))
         return
     place = along.to_numpy(dtype=float)
     axes.scatter(place, values, s=4, color=_FAINT, linewidths=0)
-    is_log = bool((place > 0.0).all()) and float(place.max()) > 20.0 * float(place.min())
+    is_log = key in points.logarithmic
     if is_log:
         axes.set_xscale("log")
     middle, median = _running_median(np.log(place) if is_log else place, values)
@@ -213,9 +282,19 @@ def _draw_effect(axes: Axes, points: StudyPoints, key: str, result: str) -> None
 
 def _groups(along: Any) -> list[Any] | None:
     """The different values of a key where they are few, in order."""
-    different = sorted(along.unique().tolist())
+    different = sorted(along.unique().tolist(), key=_order)
     is_word = any(isinstance(one, str) for one in different)
     return different if is_word or len(different) <= MOST_GROUPS else None
+
+
+def _order(value: Any) -> tuple[bool, Any]:
+    """Lists of numbers in the order of the numbers, words in that of the alphabet."""
+    if not isinstance(value, str):
+        return False, (value,)
+    try:
+        return False, tuple(float(one) for one in value.split(LIST_SEPARATOR))
+    except ValueError:
+        return True, value
 
 
 def _draw_groups(axes: Axes, groups: list[Any], along: Any, values: NDArray[np.float64]) -> None:
@@ -230,17 +309,29 @@ def _draw_groups(axes: Axes, groups: list[Any], along: Any, values: NDArray[np.f
         width = max(2.0, 6.0 - 0.2 * len(groups))
         axes.plot([place, place], [first, third], color="#8aa3bd", linewidth=width, solid_capstyle="butt", zorder=2)
         axes.plot([place - 0.28, place + 0.28], [middle, middle], color=COLOURS[0], linewidth=1.6, zorder=3)
-    every = 1 if isinstance(groups[0], str) else -(-len(groups) // 8)
-    names = [_tick(group) for group in groups[::every]]
-    long = max(map(len, names)) * len(names) > 22
-    axes.set_xticks(places[::every], names, rotation=40 if long else 0, ha="right" if long else "center")
     axes.set_xlim(-0.6, len(groups) - 0.4)
     axes.grid(visible=False, axis="x")
 
 
-def _tick(value: Any) -> str:
+def _name_groups(axes: Axes, names: Sequence[str], *, thin: bool) -> None:
+    every = -(-len(names) // MOST_TICKS) if thin else 1
+    places, names = range(0, len(names), every), names[::every]
+    lines = [line for name in names for line in name.split("\n")]
+    long = max(map(len, lines)) * len(names) > 22
+    upright = long and len(names) > 4
+    axes.set_xticks(
+        places, names, rotation=90 if upright else 40 if long else 0,
+        ha="center" if upright or not long else "right", fontsize=7.0 if long and len(names) > 12 else None,
+    )  # fmt: skip
+
+
+def _tick(value: Any, shown: str | None = None) -> str:
+    if shown is not None:
+        value = shown
+    if isinstance(value, bool | np.bool_):
+        return "true" if value else "false"
     if isinstance(value, str):
-        return value if len(value) <= 16 else value[:15] + "…"
+        return "\n".join(textwrap.wrap(value, TICK_WIDTH, break_on_hyphens=False)) or "-"
     from matplotlib.ticker import EngFormatter
 
     if abs(value) >= 1e4 or 0.0 < abs(value) < 1e-2:
@@ -312,5 +403,23 @@ def study_points(result: SweepResult) -> StudyPoints:
         objectives=objectives.names,
         maximised=objectives.maximise,
         keys=tuple(result.task.study.space.keys),
+        logarithmic=frozenset(
+            one.name
+            for axis in result.task.study.space.axes
+            for one in axis.varied
+            if isinstance(one.source, LogSteps) or getattr(one.source, "spacing", None) is Spacing.LOG
+        ),
         units=result.task.units,
+        count=result.summary.count - result.summary.failed,
+        shown=_shown(result, sample),
     )
+
+
+def _shown(result: SweepResult, sample: pd.DataFrame) -> dict[tuple[str, str], str]:
+    """Texts of varied keys that a reader wants otherwise."""
+    told = {}
+    for key in result.task.study.space.keys:
+        if result.task.kinds[key] == "text":
+            for text in sample[key].unique().tolist():
+                told[key, text] = result.task.shown_text(key, text)
+    return told

@@ -16,7 +16,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from buckdesign.design.design_checks import check_design
-from buckdesign.design.design_file import Design
+from buckdesign.design.design_file import Design, keyed_design
 from buckdesign.design.elements import ResolvedDesign
 from buckdesign.design.losses import Floats
 from buckdesign.design.merging import first_known
@@ -31,6 +31,7 @@ from buckdesign.design.resolve_choke import resolve_choke
 from buckdesign.design.resolve_semiconductors import resolve_rectifier, resolve_transistor
 from buckdesign.design.schema import Reading, read_section
 from buckdesign.design.sections import DEVICES
+from buckdesign.errors import Fault, quoted
 from buckdesign.loop.parameters import COLUMN, COLUMNS
 from buckdesign.parts import Tables
 
@@ -106,10 +107,12 @@ class DesignPoints:
         The design that is varied.
     tables : Tables
         Parts that it and its variants name.
+    is_heated : bool
+        Whether temperatures are computed, so that no device may be in an ambient above its limit.
     """
 
-    def __init__(self, base: Design, tables: Tables) -> None:
-        self.base, self.tables = base, tables
+    def __init__(self, base: Design, tables: Tables, *, is_heated: bool = True) -> None:
+        self.base, self.tables, self.is_heated = base, tables, is_heated
         self._tree = base.tree()
         self._resolved = resolve_design(base, tables)
         self._kept: dict[tuple[str, tuple[Any, ...]], _Kept] = {}
@@ -135,7 +138,7 @@ class DesignPoints:
         taken = {name: self._sections(name, values, count) for name in ROW_COLUMNS}
         failures = [_joined(some) for some in zip(*(taken[name] for name in ROW_COLUMNS), strict=True)]
         made = np.array([not text for text in failures], dtype=bool)
-        for index in np.flatnonzero(made):
+        for index in np.flatnonzero(made) if self.is_heated else ():
             failures[index] = _too_hot({name: taken[name][index] for name in (*DEVICES, "thermal")})
         made = np.array([not text for text in failures], dtype=bool)
         which = np.flatnonzero(made)
@@ -170,14 +173,20 @@ class DesignPoints:
         return self._complete(name, section) if section is not None else _Kept(section=None, element=None, row=())
 
     def _make(self, name: str, values: Mapping[str, Any]) -> _Kept:
+        made, faults = self._read(name, values)
+        if faults or made is None:
+            keys = keyed_design()
+            _, faults = self._read(name, {key: keys[key].write(value) for key, value in values.items()})
+            return _Kept(section=None, element=None, row=(), failure="; ".join(map(fault_text, faults)))
+        return self._complete(name, made)
+
+    def _read(self, name: str, values: Mapping[str, Any]) -> tuple[Any, list[Fault]]:
+        """A section with some values replaced, and what is wrong with it."""
         tree = _with_values(self._tree.get(name, {}), values)
         reading = Reading(path=Path(), locate=lambda *steps: None, tables=self.tables)
         made = read_section(type(self._section_like(name)), tree, (name,), reading)
         check_design({name: tree}, reading)
-        if reading.faults or made is None:
-            told = "; ".join(f"{one.key} = {one.value}: {one.allowed}" for one in reading.faults)
-            return _Kept(section=None, element=None, row=(), failure=told)
-        return self._complete(name, made)
+        return made, reading.faults
 
     def _section_like(self, name: str) -> Any:
         """An instance of the section's class; the design may have none of it."""
@@ -250,11 +259,31 @@ def _joined(some: Sequence[_Kept]) -> str:
 def _too_hot(kept: Mapping[str, _Kept]) -> str:
     """Why a device could not even work without losses, or nothing."""
     ambient = kept["thermal"].element.ambient_c
-    for name in DEVICES:
-        limit = kept[name].element.junction_limit_c
-        if limit is not None and limit <= ambient:
-            return f"{name}.junction_limit = {limit:g} degC: must be above the ambient, {ambient:g} degC"
-    return ""
+    elements = {name: kept[name].element for name in DEVICES}
+    limits = [(one.junction_limit_c, name) for name, one in elements.items() if one.junction_limit_c is not None]
+    if not limits or ambient < min(limits)[0]:
+        return ""
+    limit, name = min(limits)
+    part = elements[name].name
+    which = f"the {name}" if part is None else f"the {name} {part}"
+    return f"thermal.ambient = {ambient:g} degC: must be below the junction limit of {which}, {limit:g} degC"
+
+
+def fault_text(fault: Fault) -> str:
+    """A fault of a point: its key, what stands there and what is allowed.
+
+    Parameters
+    ----------
+    fault : Fault
+        The fault.
+
+    Returns
+    -------
+    str
+        One line without a file.
+    """
+    value = "" if fault.value is None else f" = {quoted(fault.value)}"
+    return f"{fault.key}{value}: {fault.allowed}"
 
 
 def _plain(values: Values) -> list[Any]:
@@ -274,4 +303,4 @@ def _with_values(tree: Mapping[str, Any], values: Mapping[str, Any]) -> dict[str
     return made
 
 
-__all__ = ["MOST_KEPT", "ROW_COLUMNS", "DesignPoints", "Values", "Variants"]
+__all__ = ["MOST_KEPT", "ROW_COLUMNS", "DesignPoints", "Values", "Variants", "fault_text"]

@@ -375,7 +375,12 @@ def _beside(target: Path, suffix: str) -> Path:
 def _checked_name(path: Path) -> Path:
     """The real place of a table, if one can be made there."""
     with naming(path):
-        target = path.resolve()
+        try:
+            target = path.resolve()
+        except RuntimeError:  # what Python before 3.13 says of a loop
+            raise FileAccessError(path, "is a link that leads back to itself") from None
+        if target.is_symlink():
+            raise FileAccessError(path, "is a link that leads back to itself")
         if target.is_dir():
             raise FileAccessError(path, "is a folder")
         if target.exists() and not target.is_file():

@@ -51,6 +51,10 @@ ONE_THREAD = (
 """Variables of the environment that keep the numeric libraries of a worker at one thread."""
 
 
+_HERE, _READY = "here", "ready"
+"""What a worker says once it runs, and once it has the rows."""
+
+
 def local_executor(job: ChunkJob, *, jobs: int, rows: int) -> OwnProcess | WorkerProcesses:
     """What computes chunks on this machine.
 
@@ -207,10 +211,11 @@ class _Worker:
     def __init__(self, payload: bytes) -> None:
         context = get_context("spawn")
         self.connection, theirs = context.Pipe()
+        self._payload = payload
         self.is_ready = False
         self.tickets: deque[_Ticket] = deque()
         """Chunks in the order in which it computes them."""
-        self._process = context.Process(target=_work, args=(theirs, payload), daemon=True)
+        self._process = context.Process(target=_work, args=(theirs,), daemon=True)
         with _one_thread(), deaf_to_interrupts():
             self._process.start()
         theirs.close()
@@ -221,10 +226,14 @@ class _Worker:
         with contextlib.suppress(OSError):
             self.connection.send((ticket.start, ticket.stop))
 
-    def take(self, message: Chunk | Exception | None) -> None:
-        """What it says: that it is ready, a chunk, or what went wrong with one, or with all of them."""
-        if message is None:
-            self.is_ready = True
+    def take(self, message: Chunk | Exception | str) -> None:
+        """What it says: that it is there or ready, a chunk, or what went wrong with one, or with all of them."""
+        if isinstance(message, str):
+            self.is_ready = message == _READY
+            if not self.is_ready:
+                # not among its arguments: whoever writes long ones to a process that has died waits for ever
+                with contextlib.suppress(OSError):
+                    self.connection.send_bytes(self._payload)
         elif self.is_ready:
             self.tickets.popleft().outcome = message
         elif isinstance(message, Exception):
@@ -295,16 +304,19 @@ def deaf_to_interrupts() -> Iterator[None]:
         signal.pthread_sigmask(signal.SIG_SETMASK, before)
 
 
-def _work(talk: Talk, payload: bytes) -> None:
-    """What a worker process does: say that it is ready, then compute chunks until the pipe ends."""
+def _work(talk: Talk) -> None:
+    """What a worker process does: take the rows, say that it is ready, then compute chunks until the pipe ends."""
     signal.signal(signal.SIGINT, signal.SIG_IGN)
     threading.Thread(target=_end_with_parent, daemon=True).start()
+    talk.send(_HERE)
     try:
-        job: ChunkJob = pickle.loads(payload)
+        job: ChunkJob = pickle.loads(talk.recv_bytes())
+    except EOFError:
+        return
     except Exception as error:
         talk.send(_portable(error))
         return
-    talk.send(None)
+    talk.send(_READY)
     with contextlib.suppress(EOFError, BrokenPipeError):
         while True:
             start, stop = talk.recv()

@@ -73,7 +73,7 @@ class PointModel:
 
     @cached_property
     def points(self) -> DesignPoints:
-        return DesignPoints(self.base, self.tables)
+        return DesignPoints(self.base, self.tables, is_heated=not self.electrical_only)
 
     def __getstate__(self) -> dict[str, Any]:
         return {name: value for name, value in self.__dict__.items() if name != "points"}

@@ -11,10 +11,11 @@ import numpy as np
 from buckdesign.design.attempts import Attempt, attempt
 from buckdesign.design.describing import component_values
 from buckdesign.design.judging import Judged, part_of
-from buckdesign.design.requirement import Requirement, requirement_from_tree
+from buckdesign.design.requirement import Requirement, requirement_from_tree, requirement_keys
 from buckdesign.errors import FaultsError
 from buckdesign.parts import Tables
 from buckdesign.studies.constraint import Constraint
+from buckdesign.studies.design_points import fault_text
 from buckdesign.studies.point_model import Column
 from buckdesign.studies.result_columns import RESULT_COLUMNS, TEXT_COLUMNS, TRUTH_COLUMNS
 from buckdesign.studies.space import Space
@@ -110,8 +111,7 @@ class RedesignModel:
         try:
             requirement = requirement_with(self.base, values, self.tables)
         except FaultsError as error:
-            faults = "; ".join(f"{one.key} = {one.value}: {one.allowed}" for one in error.faults)
-            return {"failure": faults, "within_limits": False}
+            return {"failure": "; ".join(map(fault_text, error.faults)), "within_limits": False}
         found = attempt(requirement, self.tables, jobs=jobs)
         if not found.judged:
             return {"failure": f"infeasible: {why_not(found)}", "within_limits": False}
@@ -145,10 +145,10 @@ def requirement_with(base: Requirement, values: Mapping[str, Any], tables: Table
     FaultsError
         A value isn't allowed, by itself or beside the others.
     """
-    tree = base.tree()
+    tree, keys = base.tree(), requirement_keys()
     for key, value in values.items():
         section, _, name = key.partition(".")
-        tree[section] = dict(tree.get(section, {})) | {name: list(value) if isinstance(value, tuple) else value}
+        tree[section] = dict(tree.get(section, {})) | {name: keys[key].write(value)}
     path = base.source or Path("requirement")
     return requirement_from_tree(tree, lambda *steps: None, (), path=path, tables=tables)
 

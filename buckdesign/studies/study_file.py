@@ -16,7 +16,7 @@ from buckdesign.errors import quoted
 from buckdesign.parts import Tables, load_tables
 from buckdesign.studies.axis import Axis
 from buckdesign.studies.constraint import Constraint, read_constraint
-from buckdesign.studies.result_columns import RESULT_COLUMNS
+from buckdesign.studies.result_columns import RESULT_COLUMNS, TRUTH_COLUMNS
 from buckdesign.studies.space import MOST_RANDOM, GridSpace, Method, SampledSpace, Space, most_points
 from buckdesign.studies.study_keys import Column, fault_unknown, study_columns, unknown_column
 from buckdesign.studies.vary_table import VaryReader
@@ -110,7 +110,7 @@ class _Sample:
 def read_study(
     path: Path,
     tables: Tables | None = None,
-    columns: Sequence[str] = RESULT_COLUMNS,
+    columns: Sequence[str] = (*RESULT_COLUMNS, *TRUTH_COLUMNS),
     redesign_columns: Sequence[str] = (),
 ) -> Study:
     """Read a study file.

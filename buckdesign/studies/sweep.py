@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import hashlib
 import math
 import os
 import tempfile
@@ -12,82 +11,20 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from buckdesign import __version__
-from buckdesign.design.design_file import read_design
-from buckdesign.design.keys import CountKey, FlagKey, Key, QuantityKey
-from buckdesign.design.requirement import read_requirement
-from buckdesign.errors import InputError
-from buckdesign.parts import Tables, load_tables
-from buckdesign.studies.chunks import Chunk, ChunkJob, ChunkSizes, Executor, Progress, Work
+from buckdesign.errors import FileAccessError
+from buckdesign.parts import Tables
+from buckdesign.studies.chunks import Chunk, ChunkJob, ChunkSizes, Executor, Progress
 from buckdesign.studies.growing_table import GrowingTable, fill_table, open_table
-from buckdesign.studies.point_model import PointModel
-from buckdesign.studies.redesign_model import CHOSEN, CHOSEN_NAMES, WORST, RedesignModel
-from buckdesign.studies.result_columns import RESULT_COLUMNS, TEXT_COLUMNS, TRUTH_COLUMNS
-from buckdesign.studies.space import SampledSpace
-from buckdesign.studies.study_file import Study, read_study
-from buckdesign.studies.study_keys import study_columns
-from buckdesign.studies.sweep_summary import Objectives, SweepSummary
-from buckdesign.studies.table_file import Kind, csv_header, csv_lines, read_table, split_rows
+from buckdesign.studies.study_file import Study
+from buckdesign.studies.sweep_summary import SweepSummary
+from buckdesign.studies.sweep_task import MOST_POINTS, MOST_REDESIGNS, SweepTask, check_size, sweep_task
+from buckdesign.studies.table_file import PARQUET_SUFFIX, Kind, csv_header, csv_lines, read_table, split_rows
 
 if TYPE_CHECKING:
     import pandas as pd
 
-MOST_POINTS = 1_000_000
-"""Points that a sweep computes without being asked twice (own choice: some minutes)."""
-
-MOST_REDESIGNS = 500
-"""The same where each point is designed anew (own choice: some minutes)."""
-
-REDESIGN_CHUNKS = ChunkSizes(first=1, rest=4)
-"""Points that are designed together: few, since each takes seconds (own choice)."""
-
-_SAID = ("violated", "failure")
-_TRUTHS = (*TRUTH_COLUMNS, "constraints_hold")
-
-
-@dataclass(frozen=True, kw_only=True)
-class SweepTask:
-    """A study ready to be computed.
-
-    Attributes
-    ----------
-    study : Study
-        The study.
-    work : Work
-        Its points.
-    kinds : Mapping
-        What each column of the table holds, in order.
-    units : Mapping
-        Unit of each column as `buckdesign.units` names it, for those that have one.
-    content : Mapping
-        All that the table depends on, as plain data.
-    sizes : ChunkSizes
-        Points computed together.
-    electrical_only : bool
-        Without temperatures and losses added on.
-    """
-
-    study: Study
-    work: Work
-    kinds: Mapping[str, Kind]
-    units: Mapping[str, str]
-    content: Mapping[str, Any]
-    sizes: ChunkSizes
-    electrical_only: bool = False
-
-    @property
-    def objectives(self) -> Objectives:
-        """What the study looks for."""
-        study = self.study
-        return Objectives(
-            minimise=study.minimise,
-            maximise=study.maximise,
-            subject_to=tuple(one.text for one in study.subject_to),
-        )
-
-    def default_output(self) -> Path:
-        """The table where none is named: beside the study, ``rail.study.toml`` gives ``rail.study.csv``."""
-        return self.study.path.with_name(self.study.path.name.removesuffix(".toml") + ".csv")
+SUFFIXES = (".csv", PARQUET_SUFFIX)
+"""Endings of a table."""
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -148,6 +85,7 @@ class SweepResult:
             "points": summary.count,
             "computed_now": self.computed,
             "failed": summary.failed,
+            "unsettled": summary.unsettled,
             "keeping_constraints": summary.keeping,
             "within_limits": summary.unviolated,
             "regimes": dict(sorted(summary.regimes.items())),
@@ -179,112 +117,6 @@ class SweepResult:
 def _records(piece: pd.DataFrame) -> list[dict[str, Any]]:
     plain = piece.astype(object).where(piece.notna(), None)
     return [{str(key): value for key, value in record.items()} for record in plain.to_dict("records")]
-
-
-def sweep_task(
-    study: Path | Study, tables: Tables | None = None, *, electrical_only: bool = False
-) -> SweepTask:
-    """Make a study ready to be computed.
-
-    Parameters
-    ----------
-    study : pathlib.Path or Study
-        The file, or what was read from it.
-    tables : Tables, optional
-        Parts that it names; the tables of the package where omitted.
-    electrical_only : bool
-        No temperatures and no losses added on.
-
-    Returns
-    -------
-    SweepTask
-        For `run_sweep`.
-
-    Raises
-    ------
-    InputError
-        A file has faults, or a requirement is to be designed without temperatures.
-    """
-    known = load_tables() if tables is None else tables
-    redesign = (*WORST, *(f"values.{name}" for name in CHOSEN))
-    results = (*RESULT_COLUMNS, *TRUTH_COLUMNS)
-    asked = study if isinstance(study, Study) else read_study(Path(study), known, results, redesign)
-    content: dict[str, Any] = {"study": asked.tree, "electrical_only": electrical_only}
-    if asked.requirement is not None:
-        if electrical_only:
-            raise InputError("--electrical-only: a study that designs anew at each point needs the temperatures")
-        wanted = read_requirement(asked.requirement, known)
-        work: Work = RedesignModel(wanted, asked.space, known, subject_to=asked.subject_to)
-        content["requirement"] = wanted.tree()
-    else:
-        assert asked.base is not None
-        base = read_design(asked.base, known)
-        work = PointModel(
-            base, asked.space, known, subject_to=asked.subject_to, electrical_only=electrical_only
-        )
-        content["design"] = base.tree()
-    varied = {one.name: one.key for axis in asked.space.axes for one in axis.varied}
-    columns = study_columns(varied, [*RESULT_COLUMNS, *(redesign if asked.requirement is not None else ())])
-    return SweepTask(
-        study=asked,
-        work=work,
-        kinds={name: _kind(name, varied) for name in work.columns},
-        units={name: _unit(one.unit, one.power) for name, one in columns.items() if one.unit is not None},
-        content=content | _versions(known, asked),
-        sizes=ChunkSizes() if asked.requirement is None else REDESIGN_CHUNKS,
-        electrical_only=electrical_only,
-    )
-
-
-def _unit(unit: str, power: int) -> str:
-    return "cm3" if (unit, power) == ("m3", 6) else "mm" if (unit, power) == ("m", 3) else unit
-
-
-def _kind(name: str, varied: Mapping[str, Key]) -> Kind:
-    key = varied.get(name)
-    if key is not None:
-        if isinstance(key, QuantityKey):
-            return "float"
-        return "int" if isinstance(key, CountKey) else "bool" if isinstance(key, FlagKey) else "text"
-    if name in _TRUTHS:
-        return "bool"
-    words = name in (*TEXT_COLUMNS, *_SAID) or name.removeprefix("values.") in CHOSEN_NAMES
-    return "text" if words else "float"
-
-
-def _versions(tables: Tables, study: Study) -> dict[str, Any]:
-    """What else the values depend on."""
-    digest = hashlib.sha256(repr(tables).encode()).hexdigest()[:16]
-    found = {"buckdesign": __version__, "part_tables": digest}
-    if isinstance(study.space, SampledSpace):
-        import scipy
-
-        found["scipy"] = scipy.__version__
-    return found
-
-
-def check_size(task: SweepTask, allow: int | None) -> None:
-    """Refuse a study that is larger than one would expect.
-
-    Parameters
-    ----------
-    task : SweepTask
-        The study.
-    allow : int, optional
-        Points that are allowed.
-
-    Raises
-    ------
-    InputError
-        It has more points; says how many.
-    """
-    redesigns = task.study.requirement is not None
-    most = allow if allow is not None else MOST_REDESIGNS if redesigns else MOST_POINTS
-    count = task.work.count
-    if count > most:
-        raise InputError(
-            f"{task.study.path}: {count:,} points, more than {most:,}; --allow {count} computes them all"
-        )
 
 
 def run_sweep(
@@ -332,6 +164,7 @@ def run_sweep(
     check_size(task, allow)
     told = tell or (lambda words: None)
     path = task.default_output() if output is None else Path(output)
+    _check_output(path, task.study)
     summary = SweepSummary(objectives=task.objectives, count=task.work.count)
     needed = {name: task.kinds[name] for name in task.objectives.needed()}
     notes = list(task.study.notes)
@@ -357,6 +190,15 @@ def run_sweep(
     return SweepResult(
         task=task, path=path, summary=summary, computed=task.work.count - before, notes=tuple(notes)
     )
+
+
+def _check_output(path: Path, study: Study) -> None:
+    """Refuse a table that has no known ending or would replace what it is computed from."""
+    if path.suffix not in SUFFIXES:
+        raise FileAccessError(path, f"a table ends in {' or '.join(SUFFIXES)}")
+    for source in (study.path, study.base, study.requirement):
+        if source is not None and path.exists() and source.exists() and path.samefile(source):
+            raise FileAccessError(path, "the study is computed from this file; another name is wanted")
 
 
 def _cluster(job: ChunkJob, address: str) -> AbstractContextManager[Executor]:

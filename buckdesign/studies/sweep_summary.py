@@ -46,11 +46,19 @@ class Objectives:
         Columns.
     subject_to : tuple of str
         Constraints, as text.
+    compared : tuple of str
+        Columns of numbers that the constraints look at.
     """
 
     minimise: tuple[str, ...]
     maximise: tuple[str, ...] = ()
     subject_to: tuple[str, ...] = ()
+    compared: tuple[str, ...] = ()
+
+    @property
+    def watched(self) -> tuple[str, ...]:
+        """Columns of numbers of which it is counted where they are not known."""
+        return tuple(dict.fromkeys((*self.names, *self.compared)))
 
     @property
     def names(self) -> tuple[str, ...]:
@@ -66,7 +74,7 @@ class Objectives:
     def needed(self) -> tuple[str, ...]:
         """Columns that `SweepSummary.add` looks at."""
         flags = ("constraints_hold",) if self.subject_to else ()
-        return (*dict.fromkeys(self.names), "regime", "violated", *flags, "failure")
+        return (*self.watched, "settled", "regime", "violated", *flags, "failure")
 
 
 @dataclass(kw_only=True)
@@ -87,6 +95,8 @@ class SweepSummary:
     failed: int = 0
     keeping: int = 0
     unviolated: int = 0
+    unsettled: int = 0
+    unknown: Counter[str] = field(default_factory=Counter)
     regimes: Counter[str] = field(default_factory=Counter)
     reasons: Counter[str] = field(default_factory=Counter)
     sample: list[tuple[int, bytes]] = field(default_factory=list)
@@ -116,6 +126,9 @@ class SweepSummary:
         self.failed += int((~good).sum())
         self.keeping += int(keeps.sum())
         self.unviolated += int(clean.sum())
+        self.unsettled += int((good & ~np.array(columns["settled"], dtype=bool)).sum())
+        for name in self.objectives.watched:
+            self.unknown[name] += int((good & np.isnan(np.asarray(columns[name], dtype=float))).sum())
         self.regimes.update(word for word, is_good in zip(columns["regime"], good, strict=True) if is_good)
         for text in filter(None, failure):
             self.reasons[text if text in self.reasons or len(self.reasons) < MOST_REASONS else OTHERS] += 1

@@ -32,6 +32,9 @@ DIGITS = "%.10g"
 PIECE_ROWS = 50_000
 """Rows that are read at once (own choice: some 20 MB of a table with 50 columns)."""
 
+LIST_SEPARATOR = "; "
+"""What stands between the values of a list."""
+
 PARQUET_SUFFIX = ".parquet"
 """Ending of a table that is no CSV."""
 
@@ -168,7 +171,7 @@ def _text(value: Any) -> str:
     if isinstance(value, float | np.floating):
         return DIGITS % (value + 0.0) if value == value else ""
     if isinstance(value, tuple | list):
-        return "; ".join(_text(part) for part in value)
+        return LIST_SEPARATOR.join(_text(part) for part in value)
     return str(value)
 
 

@@ -15,6 +15,8 @@ from pathlib import Path
 import pandas as pd
 import pytest
 
+from buckdesign.output.study_plots import effects_figure, front_figure, study_points
+from buckdesign.studies.sweep import run_sweep, sweep_task
 from tests.cli.conftest import Outcome
 
 EXAMPLES = Path(__file__).parents[2] / "examples"
@@ -80,6 +82,43 @@ def test_figures(program: Program, study: Path, tmp_path: Path, kind: str) -> No
     assert [figure.read_bytes() for figure in figures] == before
 
 
+def test_page_where_no_point_can_be_drawn(program: Program, study: Path, tmp_path: Path) -> None:
+    study.write_text(STUDY.replace("[best]", '"thermal.ambient" = ["300 degC"]\n[best]'))
+    done = program("sweep", study, "--plot", tmp_path / "front.svg")
+    assert done.status == 4
+    assert done.out.startswith("no point could be computed") and "why points failed" in done.out
+    assert "nothing to draw" in done.err and not (tmp_path / "front.svg").exists()
+
+
+def test_page_tells_what_the_best_rows_are(program: Program, study: Path) -> None:
+    text = STUDY.replace('["0.5 A", "2 A"]', '["0.5 A", "2 A"]\n"supply.voltage" = ["15 V", "24 V"]')
+    study.write_text(
+        text.replace('["total_loss_w", "ripple_v"]', '"total_loss_w"').replace("subject_to", "#")
+    )
+    out = " ".join(program("sweep", study).out.split())
+    assert "dropout" in out and "rows shown violate limits" in out
+    assert "kindest output.current and supply.voltage" in out
+    assert "requirement that the design carries" in out
+
+
+def test_a_wide_table_goes_on_below(program: Program, study: Path) -> None:
+    more = (
+        '"thermal.on_heatsink" = [["transistor"], ["transistor", "regulator"]]\n"thermal.heatsink" = [5, 6]\n'
+    )
+    names = [f"low-impedance electrolytic {size}" for size in ("680 uF 25 V", "330 uF 50 V")]
+    parts = f'"output_capacitor.part" = {json.dumps(names)}'
+    study.write_text(
+        STUDY.replace("[best]", f"{more}{parts}\n[best]").replace('"ripple_v"', '"choke_c", "start_margin"')
+    )
+    done = program("sweep", study)
+    page = [line for line in done.out.splitlines() if not line.startswith("table: ")]
+    assert max(map(len, page)) <= 118
+    headings = [line.split() for line in page if line.startswith("row ")]
+    assert len(headings) > 1 and all(len(set(one)) == len(one) for one in headings)
+    assert "on_heatsink" in headings[0]
+    assert any("start_margin" in one for one in headings) and "4000 %" not in done.out
+
+
 def test_failing_points_end_with_status_4(program: Program, study: Path) -> None:
     ambient = '"thermal.ambient" = ["25 degC", "300 degC"]\n'
     study.write_text(STUDY.replace('"output.current" =', f'{ambient}"output.current" ='))
@@ -125,6 +164,9 @@ def test_bad_studies(program: Program, study: Path, was: str, is_now: str, told:
         (["--plot", "front.gif"], ".svg"),
         (["--effects", "effects.svg", "--result", "ripple"], "ripple_v"),
         (["--jobs", "0"], "jobs"),
+        (["--plot", "one.svg", "--effects", "./one.svg"], "--plot and --effects: the same file"),
+        (["--output", "table.xlsx"], ".csv or .parquet"),
+        (["--output", "radio.study.toml", "--restart"], ".csv or .parquet"),
     ],
 )
 def test_bad_command_lines(
@@ -145,6 +187,41 @@ def test_a_file_of_someone_else_is_kept(program: Program, study: Path, tmp_path:
     assert table.read_text() == "precious\n"
     assert program("sweep", study, "--output", table, "--restart").status == 0
     assert len(pd.read_csv(table)) == 12
+
+
+def test_a_table_of_parts_is_kept(program: Program, study: Path, tmp_path: Path) -> None:
+    parts = tmp_path / "parts.csv"
+    parts.write_text(
+        "name,outer_diameter [mm],inner_diameter [mm],height [mm],source,how\nR 25/15/10,25,15,10,own,measured\n"
+    )
+    before = parts.read_bytes()
+    done = program("sweep", study, "--parts", parts, "--output", parts, "--restart")
+    assert done.status == 2 and "parts are read from this file" in done.err
+    assert parts.read_bytes() == before and not list(tmp_path.glob("parts.csv.*"))
+
+
+def test_axes_of_the_effects(study: Path, tmp_path: Path) -> None:
+    names = [f"low-impedance electrolytic {size}" for size in ("680 uF 25 V", "330 uF 50 V")]
+    lists = [["transistor", "regulator"], ["transistor", "regulator", "rectifier"]]
+    varied = f"""
+"output_capacitor.part" = {json.dumps(names)}
+"thermal.on_heatsink" = {json.dumps(lists)}
+"network.rh" = {{ from = "1 Mohm", to = "3 Mohm", spacing = "log" }}
+"thermal.ambient" = {{ from = "0.1 degC", to = "40 degC" }}
+[sample]
+method = "random"
+count = 40
+[best]
+minimise = ["total_loss_w", "ripple_v", "choke_c"]
+maximise = "start_margin"
+"""
+    study.write_text(STUDY[: STUDY.index("[vary]")] + "[vary]" + varied)
+    points = study_points(run_sweep(sweep_task(study), tmp_path / "table.csv", jobs=1))
+    parts, lists_drawn, rh, ambient = effects_figure(points, ["ripple_v"]).axes
+    for axes, count in ((parts, 2), (lists_drawn, 2)):
+        assert len({label.get_text() for label in axes.get_xticklabels()}) == count
+    assert (rh.get_xscale(), ambient.get_xscale()) == ("log", "linear")
+    assert len(front_figure(points).axes) == 6
 
 
 LONG = STUDY.replace("[80, 93]", "{ from = 60, to = 100, step = 1 }").replace("count = 3", "count = 40")
@@ -172,14 +249,21 @@ def test_killed_at_random_moments_the_table_is_the_same(study: Path, tmp_path: P
     span = time.monotonic() - began
     moments = random.Random(5)
     kills = int(os.environ.get("BUCKDESIGN_KILLS", "6"))
+    part = broken.with_name("broken.csv.part")
+    amid = 0
     for _ in range(kills):
         process = start(study, broken)
-        time.sleep(moments.uniform(0.2, 0.9) * span)
+        time.sleep(moments.uniform(0.3, 1.0) * span)
         process.send_signal(signal.SIGKILL)
         process.communicate()
-        part = broken if broken.exists() else broken.with_name("broken.csv.part")
-        if part.exists():
-            assert whole.read_bytes().startswith(part.read_bytes()[: part.stat().st_size // 2])
+        if broken.exists():  # begun anew, so that the next kill too hits a run that has something left to do
+            assert broken.read_bytes() == whole.read_bytes()
+            for path in tmp_path.glob("broken*"):
+                path.unlink()
+        elif part.exists():
+            amid += 0 < part.stat().st_size < whole.stat().st_size
+            assert whole.read_bytes().startswith(part.read_bytes())
+    assert amid, "no kill hit a table that was half there"
     assert finished(start(study, broken)) == 0
     assert broken.read_bytes() == whole.read_bytes()
     assert sorted(path.name for path in tmp_path.glob("broken*")) == ["broken.csv", "broken.csv.run.jsonl"]

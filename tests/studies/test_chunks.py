@@ -176,6 +176,28 @@ def test_a_chunk_whose_worker_is_killed_is_computed_again(tmp_path: Path, whole:
     assert (tmp_path / "table.csv").read_bytes() == whole
 
 
+LONG_UNGUARDED = """
+from buckdesign.studies.chunks import ChunkJob
+from buckdesign.studies.local_workers import WorkerProcesses
+from tests.studies.plain_work import PlainWork
+
+with WorkerProcesses(ChunkJob(work=PlainWork(count=8000), kept={"a" * 200_000: "float"}), 2) as workers:
+    workers.wait_until_ready()
+"""
+"""Rows longer than a pipe takes at once: whoever writes them to a process that has died must not wait."""
+
+
+def test_a_script_without_a_guard_is_told_so_however_long_its_rows(tmp_path: Path) -> None:
+    script = tmp_path / "script.py"
+    script.write_text(LONG_UNGUARDED)
+    done = subprocess.run(
+        [sys.executable, str(script)], capture_output=True, text=True, timeout=60, check=False,
+        env=os.environ | {"PYTHONPATH": str(Path(__file__).parents[2])},
+    )  # fmt: skip
+    assert done.returncode == 1
+    assert 'if __name__ == "__main__":' in done.stderr.splitlines()[-1]
+
+
 class Wordy(PlainWork):
     """Rows of a chunk that does not fit into a pipe."""
 
@@ -257,7 +279,7 @@ def test_a_script_without_a_guard_is_told(tmp_path: Path) -> None:
         timeout=60,
     )
     assert done.returncode == 1
-    assert 'if __name__ == "__main__":' in done.stderr.splitlines()[-1]
+    assert 'if __name__ == "__main__":' in done.stderr.splitlines()[-1], done.stderr
 
 
 # a whole run from outside

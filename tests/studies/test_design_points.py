@@ -10,6 +10,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from buckdesign.design import resolve_choke
 from buckdesign.design.design_file import Design, design_with, read_design
 from buckdesign.design.heat_paths import heat_data
 from buckdesign.design.losses import loss_data
@@ -104,7 +105,7 @@ def test_a_variant_is_the_design_with_these_values(rows: list[dict[str, Any]]) -
     [
         ("choke.wire", "20 mm", "choke.wire"),
         ("choke.inductance", 1e-4, "bought part"),
-        ("thermal.ambient", 250.0, "must be above the ambient"),
+        ("thermal.ambient", 250.0, "must be below the junction limit"),
         ("thermal.transistor.heatsink", 3.0, "not both"),
     ],
 )
@@ -118,6 +119,49 @@ def test_what_a_file_would_refuse_is_a_failure(
     if key != "thermal.ambient":
         with pytest.raises(FaultsError, match=told):
             design_with(base, {key: value}, tables)
+
+
+@pytest.mark.parametrize(
+    ("key", "value", "told"),
+    [
+        ("supply.ripple", 1.0, 'supply.ripple_frequency: missing beside supply.ripple'),
+        ("choke.inductance", 1e-4, 'choke.inductance = "100 uH": a winding'),
+        ("thermal.ambient", 130.0, "thermal.ambient = 130 degC: must be below the junction limit of"),
+    ],
+)
+def test_a_failure_says_key_value_and_what_is_allowed(
+    points: DesignPoints, key: str, value: float, told: str
+) -> None:
+    (failure,) = points.variants({key: np.array([value])}, 1).failures
+    assert failure.startswith(told)
+
+
+def test_the_lowest_junction_limit_is_told(points: DesignPoints) -> None:
+    values = {"thermal.ambient": np.array([130.0]), "rectifier.junction_limit": np.array([110.0])}
+    (failure,) = points.variants(values, 1).failures
+    assert failure.endswith("the rectifier 1N5822, 110 degC")
+
+
+def test_without_temperatures_any_ambient_will_do(base: Design, tables: Tables) -> None:
+    found = DesignPoints(base, tables, is_heated=False).variants({"thermal.ambient": np.array([250.0])}, 1)
+    assert found.is_made.all()
+
+
+def test_a_winding_is_laid_once(points: DesignPoints, monkeypatch: pytest.MonkeyPatch) -> None:
+    laid = []
+
+    def counted(*sizes: float) -> Any:
+        laid.append(sizes)
+        return wind(*sizes)
+
+    wind = resolve_choke.wind
+    monkeypatch.setattr(resolve_choke, "wind", counted)
+    resolve_choke._mean_turn.cache_clear()
+    factors = np.linspace(0.9, 1.1, 50)
+    found = points.variants({"choke.permeability": factors, "choke.turns": np.repeat([70, 71], 25)}, 50)
+    assert found.is_made.all() and len(laid) == 2
+    inductance = np.array([one.choke.inductance for one in found.designs])
+    np.testing.assert_allclose(inductance[:25] / inductance[0], factors[:25] / factors[0], rtol=1e-12)
 
 
 def test_good_points_beside_bad_ones(points: DesignPoints) -> None:

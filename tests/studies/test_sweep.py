@@ -13,11 +13,12 @@ import pytest
 from buckdesign.design.design_file import design_with, read_design
 from buckdesign.design.operating import operate, points_of
 from buckdesign.design.resolve import resolve_design
-from buckdesign.errors import InputError
+from buckdesign.errors import FileAccessError, InputError
 from buckdesign.studies.front import is_on_front
 from buckdesign.studies.point_model import PointModel
 from buckdesign.studies.result_columns import RESULT_COLUMNS
 from buckdesign.studies.sweep import run_sweep, sweep, sweep_task
+from buckdesign.studies.sweep_summary import SweepSummary
 
 EXAMPLES = Path(__file__).parents[2] / "examples"
 
@@ -177,7 +178,7 @@ base = "{EXAMPLES / "radio_as_built.design.toml"}"
     result = run_sweep(sweep_task(written(tmp_path, text)), tmp_path / "table.csv")
     table = pd.concat([pd.DataFrame([row]) for row in result.rows()], ignore_index=True)
     assert result.failed == 2
-    assert table["failure"].str.contains("must be above the ambient").tolist() == [False, True, False, True]
+    assert table["failure"].str.contains("must be below the junction limit").tolist() == [False, True, False, True]
     assert table["total_loss_w"].isna().tolist() == [False, True, False, True]
     summary = result.to_dict()
     assert sum(one["points"] for one in summary["failures"]) == 2
@@ -206,8 +207,83 @@ def test_too_many_points_are_refused_before_anything_is_written(tmp_path: Path) 
     assert not list(tmp_path.glob("table*"))
 
 
-def test_electrical_only_leaves_temperatures_unknown(study: Path) -> None:
-    table = sweep(study, electrical_only=True)
+def test_other_aims_look_at_the_same_table(study: Path, tmp_path: Path) -> None:
+    first = run_sweep(sweep_task(study), tmp_path / "table.csv")
+    assert first.computed == 48
+    other = written(tmp_path, STUDY.replace('minimise = ["total_loss_w", "ripple_v"]', 'maximise = "efficiency"'))
+    second = run_sweep(sweep_task(other), tmp_path / "table.csv")
+    assert second.computed == 0
+    assert second.to_dict()["maximise"] == ["efficiency"]
+    best = second.best()
+    assert best["efficiency"].is_monotonic_decreasing and len(best) > 1
+
+
+def test_what_a_study_is_computed_from_is_never_replaced(tmp_path: Path) -> None:
+    base = tmp_path / "base.csv"
+    base.write_text((EXAMPLES / "radio_as_built.design.toml").read_text())
+    study = written(tmp_path, STUDY.replace(str(EXAMPLES / "radio_as_built.design.toml"), "base.csv"), "study.csv")
+    (tmp_path / "link.csv").symlink_to(study)
+    before = {path: path.read_bytes() for path in tmp_path.iterdir()}
+    for name in ("base.csv", "study.csv", "link.csv"):
+        with pytest.raises(FileAccessError, match=rf"{name}.*computed from this file"):
+            run_sweep(sweep_task(study), tmp_path / name, restart=True)
+    assert {path: path.read_bytes() for path in tmp_path.iterdir()} == before
+
+
+@pytest.mark.parametrize("name", ["table.xlsx", "table", "table.csv.gz", "table.PARQUET"])
+def test_a_table_of_another_format_is_refused(study: Path, tmp_path: Path, name: str) -> None:
+    with pytest.raises(FileAccessError, match=r"\.csv or \.parquet"):
+        run_sweep(sweep_task(study), tmp_path / name)
+    assert not list(tmp_path.iterdir())
+
+
+def test_what_the_electrical_model_does_not_have_is_no_aim(study: Path) -> None:
+    with pytest.raises(InputError, match=r"choke_c.*--electrical-only"):
+        sweep_task(study, electrical_only=True)
+
+
+def test_points_without_the_result_that_is_looked_for_are_counted(tmp_path: Path) -> None:
+    text = f"""
+base = "{EXAMPLES / "spot.design.toml"}"
+[vary]
+"output.current" = ["1 A", "2 A"]
+[best]
+minimise = "choke_c"
+"""
+    result = run_sweep(sweep_task(written(tmp_path, text)), tmp_path / "table.csv")
+    assert result.summary.unknown["choke_c"] == 2 and not len(result.best())
+    text = text.replace('minimise = "choke_c"', 'minimise = "ripple_v"\nsubject_to = "junction_c.rectifier < 400"')
+    result = run_sweep(sweep_task(written(tmp_path, text)), tmp_path / "other.csv")
+    assert result.summary.unknown == {"ripple_v": 0, "junction_c.rectifier": 2}
+    assert result.to_dict()["keeping_constraints"] == 0
+    again = run_sweep(sweep_task(written(tmp_path, text)), tmp_path / "other.csv")
+    assert again.computed == 0 and again.summary.unknown == result.summary.unknown
+
+
+def test_unsettled_points_are_counted(study: Path, tmp_path: Path) -> None:
+    result = run_sweep(sweep_task(study), tmp_path / "table.csv")
+    settled = [row["settled"] for row in result.rows()]
+    assert result.to_dict()["unsettled"] == settled.count(False)
+    lines = (tmp_path / "table.csv").read_text().replace(",true,", ",false,", 1)
+    columns: dict[str, list[object]] = {name: [] for name in result.task.objectives.needed()}
+    for row in result.rows():
+        for name in columns:
+            columns[name].append(float("nan") if row[name] is None else row[name])
+    columns["settled"][:3] = [False] * 3
+    summary = SweepSummary(objectives=result.task.objectives, count=48)
+    summary.add(0, lambda place: lines.splitlines(keepends=True)[place + 1].encode(), columns)
+    assert summary.unsettled == settled.count(False) + settled[:3].count(True)
+
+
+def test_units_of_the_page(study: Path) -> None:
+    units = sweep_task(study).units
+    assert units["efficiency"] == units["duty"] == "%"
+    assert units["start_margin"] == units["period_cycles"] == units["cycle_spread"] == "1"
+    assert units["choke_volume_cm3"] == "cm3" and units["thermal.ambient"] == "degC"
+
+
+def test_electrical_only_leaves_temperatures_unknown(tmp_path: Path) -> None:
+    table = sweep(written(tmp_path, STUDY.replace('"choke_c < 60", ', "")), electrical_only=True)
     assert table["junction_c.transistor"].isna().all() and table["choke_c"].isna().all()
     assert (table["losses_w.choke_core"] == 0.0).all()
     assert (table["total_loss_w"] > 0.0).all()

@@ -464,6 +464,13 @@ def test_a_folder_without_permission(tmp_path: Path) -> None:
     tmp_path.chmod(0o700)
 
 
+def test_a_link_to_itself_is_no_place_for_a_table(tmp_path: Path) -> None:
+    path = tmp_path / "loop.csv"
+    path.symlink_to(path)
+    with pytest.raises(FileAccessError, match="leads back to itself"):
+        open_table(path, content={}, kinds={"a": "float"}, count=1)
+
+
 def test_a_link_is_followed(tmp_path: Path, whole: bytes) -> None:
     (tmp_path / "there").mkdir()
     link = tmp_path / "table.csv"
