@@ -12,8 +12,8 @@ from buckdesign.cli.console import print_note
 if TYPE_CHECKING:
     from buckdesign.studies.chunks import Progress
 
-TERMINAL_SECONDS, FILE_SECONDS = 0.5, 15.0
-"""Time between two notes, on a terminal and into a file [s] (own choice)."""
+TERMINAL_SECONDS, FIRST_SECONDS, FILE_SECONDS = 0.5, 3.0, 15.0
+"""Time between two notes on a terminal; until the first one into a file, and between two there [s] (own choice)."""
 
 
 class ProgressNote:
@@ -29,6 +29,8 @@ class ProgressNote:
         self._things = things
         self._is_terminal = sys.stderr is not None and sys.stderr.isatty()
         self._told = time.monotonic()
+        self._wait = TERMINAL_SECONDS if self._is_terminal else FIRST_SECONDS
+        self._untold: Progress | None = None
         self._width = 0
 
     def __enter__(self) -> Self:
@@ -38,13 +40,17 @@ class ProgressNote:
         self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
     ) -> None:
         self._wipe()
+        if self._untold is not None:
+            print_note(progress_text(self._untold, self._things))
 
     def __call__(self, progress: Progress) -> None:
         """Tell it, unless something was told just now."""
         now = time.monotonic()
-        if now - self._told < (TERMINAL_SECONDS if self._is_terminal else FILE_SECONDS):
+        self._untold = progress
+        if now - self._told < self._wait:
             return
-        self._told = now
+        self._told, self._wait = now, TERMINAL_SECONDS if self._is_terminal else FILE_SECONDS
+        self._untold = progress if self._is_terminal else None
         text = progress_text(progress, self._things)
         if not self._is_terminal:
             print_note(text)
@@ -77,8 +83,8 @@ def progress_text(progress: Progress, things: str) -> str:
         One line.
     """
     rate = f"{progress.rate:,.0f}/s" if progress.rate >= 10.0 else f"{progress.rate:.2g}/s"
-    left = duration_text(progress.remaining)
-    return f"{progress.done:,} of {progress.count:,} {things}, {rate}, {left} left"
+    text = f"{progress.done:,} of {progress.count:,} {things}, {rate}"
+    return text if progress.done == progress.count else f"{text}, {duration_text(progress.remaining)} left"
 
 
 def duration_text(seconds: float) -> str:
