@@ -27,7 +27,7 @@ COMMANDS: dict[str, str] = {
     "choke": "Wind a choke, choose one, recognise a ring, show its bias curve.",
     "rectifiers": "Compare rectifiers in a design, and where the choice flips.",
     "sweep": "Compute a study over a design space into a table.",
-    "tolerance": "Yield and worst case of a design whose parts are off by their tolerances.",
+    "tolerance": "Yield and worst case of a design by its tolerances.",
     "parts": "List, show and check part and core tables.",
 }
 """Command and its line in the list, in the order of the list; the command is `app` in ``cli/<name>.py``."""

@@ -6,6 +6,7 @@ loop; `buckdesign.design.settling` runs it again until the temperatures stand st
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
@@ -254,7 +255,7 @@ def runaway_reach(
     known = np.isfinite(base) & np.isfinite(path) & (at_base > 0.0) & (path > 0.0)
     path, at_base = np.where(known, path, 1.0), np.where(known, at_base, 1e-9)
     hot = np.asarray(junction_with_leakage(base, path, at_base, data.leakage_coefficient))
-    at_hot = np.where(np.isnan(hot), np.e * at_base, (hot - base) / path)
+    at_hot = np.where(np.isnan(hot), math.e * at_base, (hot - base) / path)
     margin = runaway_margin(np.maximum(at_hot, 1e-12), data.leakage_coefficient, path)
     room = runaway_room(at_base, data.leakage_coefficient, path)
     return np.where(known, margin, np.nan), np.where(known, ambient_c + room, np.nan)
