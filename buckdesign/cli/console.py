@@ -30,6 +30,14 @@ def print_note(text: str) -> None:
     _print(sys.stderr, text, "standard error")
 
 
+def note_compiling() -> None:
+    """Say that the first simulation on a machine takes longer, where it is the first."""
+    from buckdesign.loop.compiling import is_cached
+
+    if not is_cached():
+        print_note("first run: compiling the simulation, about a minute; later runs start at once")
+
+
 def flush_output() -> None:
     """Write out what is still buffered.
 

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from buckdesign.cli.console import is_ascii_only, print_data, print_note
+from buckdesign.cli.console import is_ascii_only, note_compiling, print_data, print_note
 from buckdesign.cli.options import Force, Json, Output, Parts, RequirementFile, new_application, tables_with
 
 if TYPE_CHECKING:
@@ -53,7 +53,7 @@ def design(
 
         figure_format(budget)
         check_writable_name(budget, force=force)
-    _note_compiling()
+    note_compiling()
     result = design_supply(wanted, tables, progress=print_note)
     if result.feasible and result.design is not None:
         write_design(result.design, target, force=force)
@@ -67,13 +67,6 @@ def design(
 def default_target(requirement: Path) -> Path:
     """The design file that belongs to a requirement file."""
     return requirement.with_name(f"{requirement.stem}.design.toml")
-
-
-def _note_compiling() -> None:
-    from buckdesign.loop.compiling import is_cached
-
-    if not is_cached():
-        print_note("first run: compiling the simulation, about a minute; later runs start at once")
 
 
 def _draw(result: DesignResult, budget: Path, force: bool) -> None:

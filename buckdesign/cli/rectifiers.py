@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from buckdesign.cli.console import is_ascii_only, print_data, print_note
+from buckdesign.cli.console import is_ascii_only, note_compiling, print_data, print_note
 from buckdesign.cli.options import (
     DesignFile,
     Force,
@@ -78,7 +78,7 @@ def rectifiers(
     _check_plot(plot, force)
     tables = tables_with(parts)
     made = read_design(design, tables)
-    _note_compiling()
+    note_compiling()
     chosen = tuple(names or ())
     found = compare_rectifiers(
         made, chosen, parallel=parallel, supply=supply, load_current=load, ambient_c=ambient, tables=tables
@@ -104,13 +104,6 @@ def _check_plot(plot: Path | None, force: bool) -> None:
 
     figure_format(plot)
     check_writable_name(plot, force=force)
-
-
-def _note_compiling() -> None:
-    from buckdesign.loop.compiling import is_cached
-
-    if not is_cached():
-        print_note("first run: compiling the simulation, about a minute; later runs start at once")
 
 
 def _write_plot(found: Comparison, choice: Choice | None, plot: Path, force: bool) -> None:

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
-from buckdesign.cli.console import is_ascii_only, print_data, print_note
+from buckdesign.cli.console import is_ascii_only, note_compiling, print_data, print_note
 from buckdesign.cli.options import (
     DesignFile,
     ElectricalOnly,
@@ -71,7 +71,7 @@ def simulate(
     tables = tables_with(parts)
     made = read_design(design, tables)
     wanted = None if requirement is None else read_requirement(requirement, tables)
-    _note_compiling()
+    note_compiling()
     found = run(
         made,
         supply=supply,
@@ -103,13 +103,6 @@ def _check_files(figures: tuple[Path | None, ...], waveforms: Path | None, force
             check_writable_name(figure, force=force)
     if waveforms is not None:
         check_writable_name(waveforms, force=force)
-
-
-def _note_compiling() -> None:
-    from buckdesign.loop.compiling import is_cached
-
-    if not is_cached():
-        print_note("first run: compiling the simulation, about a minute; later runs start at once")
 
 
 def _write_files(found: Simulation, plot: Path | None, waveforms: Path | None, force: bool) -> None:

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from buckdesign.cli.console import is_ascii_only, print_data, print_note
+from buckdesign.cli.console import is_ascii_only, note_compiling, print_data, print_note
 from buckdesign.cli.options import ElectricalOnly, Force, Json, Output, Parts, new_application, tables_with
 from buckdesign.cli.progress import ProgressNote
 
@@ -65,7 +65,7 @@ def sweep(
     _check_files(plot, effects, output, parts, force)
     task = sweep_task(study, tables_with(parts), electrical_only=electrical_only)
     shown = _results(result, task.kinds) if result else None
-    _note_compiling()
+    note_compiling()
     with ProgressNote("points") as progress:
         done = run_sweep(
             task, output, jobs=jobs, cluster=cluster, restart=restart, allow=allow,
@@ -110,13 +110,6 @@ def _results(names: list[str], kinds: object) -> list[str]:
             near = ", ".join(quoted(one) for one in nearest_names(name, known))
             raise InputError(f"--result {quoted(name)}: no column of numbers, nearest: {near}")
     return names
-
-
-def _note_compiling() -> None:
-    from buckdesign.loop.compiling import is_cached
-
-    if not is_cached():
-        print_note("first run: compiling the simulation, about a minute; later runs start at once")
 
 
 def _draw(

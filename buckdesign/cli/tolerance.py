@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from buckdesign.cli.console import is_ascii_only, print_data, print_note
+from buckdesign.cli.console import is_ascii_only, note_compiling, print_data, print_note
 from buckdesign.cli.options import (
     DesignFile,
     ElectricalOnly,
@@ -116,7 +116,7 @@ def tolerance(
         return
     _check_files(target, plot, force)
     _check_not_read((target, plot), (design, requirement, *(parts or ())))
-    _note_compiling()
+    note_compiling()
     study = tolerance_study(
         made, requirement=wanted, with_defaults=defaults, tables=tables, effort=effort, tell=_progress()
     )
@@ -164,13 +164,6 @@ def _check_not_read(written: Iterable[Path | None], read: Iterable[Path | None])
     for path in written:
         if path is not None and path.resolve() in sources:
             raise InputError(f"{path}: is read from and would be written over; give another name")
-
-
-def _note_compiling() -> None:
-    from buckdesign.loop.compiling import is_cached
-
-    if not is_cached():
-        print_note("first run: compiling the simulation, about a minute; later runs start at once")
 
 
 def _progress() -> Callable[[str], None] | None:

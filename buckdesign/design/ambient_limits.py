@@ -2,14 +2,17 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from pathlib import Path
 
-from buckdesign.design.elements import ResolvedDesign
+from buckdesign.design.elements import RectifierElement, RegulatorElement, ResolvedDesign, TransistorElement
 from buckdesign.design.requirement import Requirement
 from buckdesign.design.sections import DEVICES
 from buckdesign.design.toml_source import read_toml
 from buckdesign.errors import Fault, FaultsError, InputError
 from buckdesign.parts import Tables
+
+Device = RegulatorElement | TransistorElement | RectifierElement
 
 
 def check_ambient(resolved: ResolvedDesign, ambient_c: float | None = None) -> None:
@@ -28,19 +31,39 @@ def check_ambient(resolved: ResolvedDesign, ambient_c: float | None = None) -> N
         With the lowest of the limits; where the ambient stands in the design's file, with file and line.
     """
     ambient = resolved.heat.ambient_c if ambient_c is None else ambient_c
-    limits = [
-        (limit, name) for name in DEVICES if (limit := getattr(resolved, name).junction_limit_c) is not None
-    ]
-    if not limits or ambient < min(limits)[0]:
+    allowed = ambient_allowed(ambient, {name: getattr(resolved, name) for name in DEVICES})
+    if not allowed:
         return
-    limit, name = min(limits)
-    part = getattr(resolved, name).name
-    which = f"the {name}" if part is None else f"the {name} {part}"
-    allowed = f"must be below the junction limit of {which}, {limit:g} degC"
     source = resolved.design.source
     if ambient_c is not None or source is None:
         raise InputError(f"ambient = {ambient:g} degC: {allowed}")
     raise FaultsError([_fault(source, "thermal", ambient, allowed)])
+
+
+def ambient_allowed(ambient_c: float, devices: Mapping[str, Device]) -> str:
+    """What is allowed instead of an ambient at or above the junction limit of a device.
+
+    Parameters
+    ----------
+    ambient_c : float
+        Ambient [degC].
+    devices : Mapping
+        Elements by the name of the device.
+
+    Returns
+    -------
+    str
+        With the lowest of the limits; empty where the ambient is below all that are known.
+    """
+    limits = [
+        (limit, name) for name, one in devices.items() if (limit := one.junction_limit_c) is not None
+    ]
+    if not limits or ambient_c < min(limits)[0]:
+        return ""
+    limit, name = min(limits)
+    part = devices[name].name
+    which = f"the {name}" if part is None else f"the {name} {part}"
+    return f"must be below the junction limit of {which}, {limit:g} degC"
 
 
 def check_requirement_ambient(requirement: Requirement, tables: Tables) -> None:

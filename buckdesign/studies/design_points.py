@@ -15,6 +15,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from buckdesign.design.ambient_limits import ambient_allowed
 from buckdesign.design.design_checks import check_design
 from buckdesign.design.design_file import Design, keyed_design
 from buckdesign.design.elements import ResolvedDesign
@@ -259,14 +260,8 @@ def _joined(some: Sequence[_Kept]) -> str:
 def _too_hot(kept: Mapping[str, _Kept]) -> str:
     """Why a device could not even work without losses, or nothing."""
     ambient = kept["thermal"].element.ambient_c
-    elements = {name: kept[name].element for name in DEVICES}
-    limits = [(one.junction_limit_c, name) for name, one in elements.items() if one.junction_limit_c is not None]
-    if not limits or ambient < min(limits)[0]:
-        return ""
-    limit, name = min(limits)
-    part = elements[name].name
-    which = f"the {name}" if part is None else f"the {name} {part}"
-    return f"thermal.ambient = {ambient:g} degC: must be below the junction limit of {which}, {limit:g} degC"
+    allowed = ambient_allowed(ambient, {name: kept[name].element for name in DEVICES})
+    return f"thermal.ambient = {ambient:g} degC: {allowed}" if allowed else ""
 
 
 def fault_text(fault: Fault) -> str:

@@ -138,7 +138,7 @@ class PointModel:
         told: dict[str, Column] = {"settled": settled, "within_limits": within, "violated": violated}
         if self.subject_to:
             given: dict[str, Any] = {**values, **found, **told}
-            holds = good
+            holds = good.copy()
             for constraint in self.subject_to:
                 holds &= constraint.holds(given[constraint.key])
             told["constraints_hold"] = holds
