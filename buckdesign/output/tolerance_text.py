@@ -6,7 +6,7 @@ import textwrap
 from collections.abc import Sequence
 
 from buckdesign.output.simulation import listing
-from buckdesign.output.text import Column, text_table
+from buckdesign.output.text import Column, signs, text_table
 from buckdesign.output.wide_tables import WIDTH, noted_table, wrapped_table
 from buckdesign.studies.ageing import Wear
 from buckdesign.studies.sensitivity import LEAST_MARGIN, Sensitivity
@@ -201,7 +201,7 @@ def _corner_row(study: ToleranceStudy, corner: WorstCorner) -> list[str]:
         value_text(corner.value, unit),
         value_text(corner.limit, unit),
         margin_text(corner.margin),
-        study.model.where(corner.point),
+        signs(study.model.where(corner.point)),
     ]
 
 
@@ -245,7 +245,7 @@ def _unit_row(study: ToleranceStudy, one: WorstUnit) -> list[str]:
         value_text(one.value, unit),
         value_text(one.limit, unit),
         margin_text(one.margin),
-        one.where,
+        signs(one.where),
     ]
 
 
@@ -344,7 +344,11 @@ def _remarks(study: ToleranceStudy) -> list[str]:
             "of its tolerance; --all-points takes all"
         )
     told.append("normal and lognormal: the tolerance is three standard deviations, nothing lies beyond")
-    told.append("values differ independently of each other; half a tolerance weighs the same units anew")
+    told.append(
+        "values differ independently of each other; half a tolerance weighs the same units anew, and its gain "
+        "stands with two standard errors: not certain where it is below three, since the largest of many gains "
+        "is large by chance"
+    )
     if study.sensitivity is not None:
         told.append(_about_shares(study.sensitivity))
     if study.wear is not None:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from buckdesign.output.text import Column, text_table
+from buckdesign.output.text import Column, signs, text_table
 from buckdesign.output.tolerance_text import margin_text, value_text
 from buckdesign.studies.tolerance_result import SingleUnit
 from buckdesign.studies.unit_runs import PART_LIMITS
@@ -67,7 +67,7 @@ def _unit_limits(one: SingleUnit) -> str:
                 value_text(value if value == value else None, runs.units[column]),
                 value_text(limit, runs.units[column]),
                 margin_text(float(runs.margin[0, column])),
-                one.model.where(int(runs.point[0, column])),
+                signs(one.model.where(int(runs.point[0, column]))),
                 "" if runs.holds[0, column] else "FAILS",
             ]
         )
